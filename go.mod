@@ -1,0 +1,3 @@
+module torrloom
+
+go 1.26
