@@ -1,0 +1,233 @@
+// Package wire is the boundary between the page and the engine: the message types, and Handle, which answers one
+// request. It has no syscall/js, so that every request can be tested natively; wasm/main.go only carries bytes.
+//
+// Promise: one request yields any number of progress messages, then exactly one reply or one fault. Bodies are small
+// JSON. Arrays travel as buffers beside the body, never inside it. All buffers hold little-endian numbers, x-fastest.
+//
+// To add a request: a row in requests (handle.go), its body types here, then go run ./build site to renew
+// site/wire.gen.ts.
+package wire
+
+import (
+	"torrloom/recon/acquisition"
+	"torrloom/recon/fault"
+	"torrloom/recon/recipe"
+)
+
+// Version changes whenever a message changes its shape or meaning. Page and engine refuse to talk across versions.
+const Version = 1
+
+// Hello is what an engine says first, before any request.
+type Hello struct {
+	Version   int              `json:"version"`
+	Build     string           `json:"build"`
+	Limits    Limits           `json:"limits"`
+	Catalogue []recipe.Setting `json:"catalogue"`
+}
+
+// Limits are the sizes past which a request is refused.
+type Limits struct {
+	MemoryBytes int64 `json:"memoryBytes"` // estimated need of one engine
+	Matrix      int   `json:"matrix"`      // voxels per axis
+}
+
+// Progress is sent while a request is being worked on.
+type Progress struct {
+	Stage    string  `json:"stage"`    // "reconstruct", "fit", ...
+	Fraction float64 `json:"fraction"` // 0..1
+}
+
+// OpenRequest opens the files whose bytes are the buffers, in the same order.
+type OpenRequest struct {
+	Names []string `json:"names"`
+}
+
+// DemoRequest makes the invented demo acquisition.
+type DemoRequest struct {
+	Noise bool `json:"noise"`
+}
+
+// Opened answers OpenRequest and DemoRequest: what was read.
+type Opened struct {
+	Name          string               `json:"name"`
+	MadeUp        bool                 `json:"madeUp"`
+	Inputs        []Input              `json:"inputs"`
+	Delays        int                  `json:"delays"`
+	Shots         int                  `json:"shots"`
+	ImageShots    int                  `json:"imageShots"`
+	Samples       int                  `json:"samples"`
+	Dim           int                  `json:"dim"`
+	DelayUS       []float64            `json:"delayUS"`
+	DwellNS       float64              `json:"dwellNS"`
+	TimeZero      float64              `json:"timeZeroSample"`
+	Sequence      string               `json:"sequence"`
+	Encoding      string               `json:"encoding"`
+	Domain        string               `json:"domain"`
+	RateName      string               `json:"rateName"` // R1 or R2
+	GradientMin   float64              `json:"gradientMinMTPerM"`
+	GradientMax   float64              `json:"gradientMaxMTPerM"`
+	KMax          float64              `json:"kMaxPerMM"`      // smallest over the image shots
+	Resolution    float64              `json:"resolutionMM"`   // 1/(2 kMax)
+	AliasFree     float64              `json:"aliasFreeMM"`    // field of view the sampling interval allows
+	Extent        float64              `json:"extentMM"`       // measured diameter of the object around the gradient centre
+	Reference     int                  `json:"referenceDelay"` // index of the delay of phase reference and mask
+	SignalToNoise float64              `json:"signalToNoise"`  // echo height over noise SD at the reference delay
+	Optional      acquisition.Optional `json:"optional"`
+	Recipe        recipe.Recipe        `json:"recipe"` // defaults for these data
+	Warnings      []string             `json:"warnings"`
+}
+
+// Input names one file and its SHA-256.
+type Input struct {
+	Name   string `json:"name"`
+	Bytes  int64  `json:"bytes"`
+	SHA256 string `json:"sha256"`
+}
+
+// TracesRequest asks for one shot at one delay, and for the whole signal over the delays.
+type TracesRequest struct {
+	Delay int `json:"delay"`
+	Shot  int `json:"shot"`
+}
+
+// Traces answers TracesRequest. Numbers are few (one shot), so they travel in the body.
+type Traces struct {
+	TimeNS      []float64  `json:"timeNS"` // from the echo centre or pulse; empty for projection data
+	Real        []float64  `json:"real"`   // phased trace
+	Imag        []float64  `json:"imag"`
+	PositionMM  []float64  `json:"positionMM"`
+	Projection  []float64  `json:"projection"`
+	DelayUS     []float64  `json:"delayUS"`
+	EchoHeight  []float64  `json:"echoHeight"` // mean over the image shots of the phased signal at k = 0, per delay
+	GradientMTm [3]float64 `json:"gradientMTPerM"`
+}
+
+// PlanRequest asks what a recipe would do to the open acquisition. Recipe is JSON text, so that a faulty one is
+// answered with a fault that names the key.
+type PlanRequest struct {
+	Recipe  string `json:"recipe"`
+	Workers int    `json:"workers"`
+}
+
+// Plan answers PlanRequest. Keys name the results of the stages: two plans with the same key share that stage's
+// result. ReconstructJobs and FitJobs are how to split the work.
+type Plan struct {
+	Recipe          recipe.Recipe `json:"recipe"` // complete, every default filled in
+	Keys            Keys          `json:"keys"`
+	N               [3]int        `json:"n"`
+	VoxelMM         [3]float64    `json:"voxelMM"`
+	OriginMM        [3]float64    `json:"originMM"` // centre of voxel (0,0,0)
+	MemoryBytes     int64         `json:"memoryBytes"`
+	ReconstructJobs [][]int       `json:"reconstructJobs"` // delay indices of each job
+	FitJobs         [][2]int      `json:"fitJobs"`         // voxel range [from, to) of each job
+	Reference       int           `json:"referenceDelay"`
+	Warnings        []string      `json:"warnings"`
+}
+
+// Keys are hashes of the data and of all settings that reach a stage.
+type Keys struct {
+	Measure     string `json:"measure"`
+	Reconstruct string `json:"reconstruct"`
+	Fit         string `json:"fit"`
+	Derive      string `json:"derive"`
+}
+
+// MeasureRequest asks for what conditioning needs to know about the whole acquisition before it can be split.
+type MeasureRequest struct {
+	Recipe recipe.Recipe `json:"recipe"`
+}
+
+// Measured answers MeasureRequest. Constants is opaque to the page, which hands it to every later job.
+type Measured struct {
+	Constants string   `json:"constants"`
+	Warnings  []string `json:"warnings"`
+}
+
+// ReconstructRequest asks for the images of some delays. The reply has one buffer, float32 [delay][voxel].
+type ReconstructRequest struct {
+	Recipe    recipe.Recipe `json:"recipe"`
+	Constants string        `json:"constants"`
+	Delays    []int         `json:"delays"`
+}
+
+// Reconstructed answers ReconstructRequest.
+type Reconstructed struct {
+	NoiseSD []float64 `json:"noiseSD"` // predicted noise SD of a voxel, per delay of the request
+	Seconds float64   `json:"seconds"`
+}
+
+// FitRequest asks for the rates of voxels. The buffer is float32 [delay][voxel] over the job's voxels, all delays.
+// The reply has the buffers rate, rateSE, amplitude, chiSquare (float32) and status (uint8), each over those voxels.
+type FitRequest struct {
+	Recipe  recipe.Recipe `json:"recipe"`
+	NoiseSD []float64     `json:"noiseSD"`
+	Voxels  int           `json:"voxels"`
+}
+
+// Fitted answers FitRequest.
+type Fitted struct {
+	Seconds float64 `json:"seconds"`
+}
+
+// DeriveRequest asks for mask, pO2 and numbers. Buffers: the reference-delay image, rate, rateSE (float32), status
+// (uint8), over all voxels. The reply has the buffers fate (uint8, see Fates), pO2 and pO2SE (float32; empty without a
+// calibration).
+type DeriveRequest struct {
+	Recipe recipe.Recipe `json:"recipe"`
+}
+
+// Derived answers DeriveRequest.
+type Derived struct {
+	MaskLevel float64     `json:"maskLevel"` // amplitude at the threshold
+	Fates     []FateCount `json:"fates"`
+	Rate      Summary     `json:"rate"`
+	PO2       *Summary    `json:"pO2"` // null without a calibration
+	Negative  int         `json:"negative"`
+	Warnings  []string    `json:"warnings"`
+}
+
+// FateCount counts the voxels that share a fate: index into the fate buffer's values.
+type FateCount struct {
+	Value int    `json:"value"`
+	Label string `json:"label"` // "in the map", "below the mask level", ...
+	Count int    `json:"count"`
+}
+
+// Summary describes the answered voxels of one map.
+type Summary struct {
+	Unit      string     `json:"unit"`
+	Count     int        `json:"count"`
+	Mean      float64    `json:"mean"`
+	SD        float64    `json:"sd"`
+	Median    float64    `json:"median"`
+	Quartiles [2]float64 `json:"quartiles"`
+	Range     [2]float64 `json:"range"`
+	MedianSE  float64    `json:"medianSE"`  // median of the voxels' standard errors
+	Fractions []Fraction `json:"fractions"` // pO2 only
+	Edges     []float64  `json:"edges"`     // histogram bin edges
+	Counts    []int      `json:"counts"`
+}
+
+// Fraction is the share of answered voxels at or below a threshold.
+type Fraction struct {
+	Threshold float64 `json:"threshold"`
+	Share     float64 `json:"share"`
+}
+
+// ExportRequest asks for one map as a file. The buffer holds its values; the reply has one buffer, the file's bytes.
+type ExportRequest struct {
+	Recipe   recipe.Recipe `json:"recipe"`
+	Quantity string        `json:"quantity"` // "pO2", "rate", "amplitude", "mask"
+	DelayUS  float64       `json:"delayUS"`  // of the amplitude image
+}
+
+// Exported answers ExportRequest.
+type Exported struct {
+	Name string `json:"name"`
+	Type string `json:"type"` // media type
+}
+
+// Failure answers a request that could not be done.
+type Failure struct {
+	Fault fault.Fault `json:"fault"`
+}
