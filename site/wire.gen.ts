@@ -1,0 +1,276 @@
+// Generated from wasm/wire by go run ./build site. Do not edit.
+
+export const WireVersion = 1;
+
+export interface Calibration {
+  rate: string;
+  zeroPerUS: number;
+  slopePerUSPerTorr: number;
+}
+
+export interface Choice {
+  value: string;
+  label: string;
+  help: string;
+}
+
+export interface Conditioning {
+  offset: string;
+  phase: string;
+  timeShiftSamples: number;
+}
+
+export interface DemoRequest {
+  noise: boolean;
+}
+
+export interface DeriveRequest {
+  recipe: Recipe;
+}
+
+export interface Derived {
+  maskLevel: number;
+  fates: FateCount[];
+  rate: Summary;
+  pO2: Summary | null;
+  negative: number;
+  warnings: string[];
+}
+
+export interface ExportRequest {
+  recipe: Recipe;
+  quantity: string;
+  delayUS: number;
+}
+
+export interface Exported {
+  name: string;
+  type: string;
+}
+
+export interface Failure {
+  fault: Fault;
+}
+
+export interface FateCount {
+  value: number;
+  label: string;
+  count: number;
+}
+
+export interface Fault {
+  kind: string;
+  where: string;
+  text: string;
+}
+
+export interface FitRequest {
+  recipe: Recipe;
+  noiseSD: number[];
+  voxels: number;
+}
+
+export interface Fitted {
+  seconds: number;
+}
+
+export interface Fraction {
+  threshold: number;
+  share: number;
+}
+
+export interface Hello {
+  version: number;
+  build: string;
+  limits: Limits;
+  catalogue: Setting[];
+}
+
+export interface Input {
+  name: string;
+  bytes: number;
+  sha256: string;
+}
+
+export interface Keys {
+  measure: string;
+  reconstruct: string;
+  fit: string;
+  derive: string;
+}
+
+export interface Limits {
+  memoryBytes: number;
+  matrix: number;
+}
+
+export interface Mask {
+  amplitudeFraction: number;
+}
+
+export interface MeasureRequest {
+  recipe: Recipe;
+}
+
+export interface Measured {
+  constants: string;
+  warnings: string[];
+}
+
+export interface OpenRequest {
+  names: string[];
+}
+
+export interface Opened {
+  name: string;
+  madeUp: boolean;
+  inputs: Input[];
+  delays: number;
+  shots: number;
+  imageShots: number;
+  samples: number;
+  dim: number;
+  delayUS: number[];
+  dwellNS: number;
+  timeZeroSample: number;
+  sequence: string;
+  encoding: string;
+  domain: string;
+  rateName: string;
+  gradientMinMTPerM: number;
+  gradientMaxMTPerM: number;
+  kMaxPerMM: number;
+  resolutionMM: number;
+  aliasFreeMM: number;
+  extentMM: number;
+  referenceDelay: number;
+  signalToNoise: number;
+  optional: Optional;
+  recipe: Recipe;
+  warnings: string[];
+}
+
+export interface Optional {
+  echo_time_us?: number;
+  repetition_us?: number;
+  carrier_MHz?: number;
+  temperature_C?: number;
+  probe?: string;
+  note?: string;
+  r1_zero_per_us?: number;
+  r1_slope_per_us_per_torr?: number;
+  r2_zero_per_us?: number;
+  r2_slope_per_us_per_torr?: number;
+}
+
+export interface Plan {
+  recipe: Recipe;
+  keys: Keys;
+  n: [number, number, number];
+  voxelMM: [number, number, number];
+  originMM: [number, number, number];
+  memoryBytes: number;
+  reconstructJobs: number[][];
+  fitJobs: ([number, number])[];
+  referenceDelay: number;
+  warnings: string[];
+}
+
+export interface PlanRequest {
+  recipe: string;
+  workers: number;
+}
+
+export interface Progress {
+  stage: string;
+  fraction: number;
+}
+
+export interface Rates {
+  minPerUS: number;
+  maxPerUS: number;
+}
+
+export interface Recipe {
+  recipe: number;
+  conditioning: Conditioning;
+  reconstruction: Reconstruction;
+  rates: Rates;
+  calibration?: Calibration;
+  mask: Mask;
+}
+
+export interface ReconstructRequest {
+  recipe: Recipe;
+  constants: string;
+  delays: number[];
+}
+
+export interface Reconstructed {
+  noiseSD: number[];
+  seconds: number;
+}
+
+export interface Reconstruction {
+  method: string;
+  matrix: number;
+  fieldOfViewMM: number;
+  window: string;
+  cutoff: number;
+}
+
+export interface Setting {
+  path: string;
+  group: string;
+  label: string;
+  unit: string;
+  kind: string;
+  min: number;
+  max: number;
+  step: number;
+  choices: Choice[];
+  help: string;
+  stage: string;
+}
+
+export interface Summary {
+  unit: string;
+  count: number;
+  mean: number;
+  sd: number;
+  median: number;
+  quartiles: [number, number];
+  range: [number, number];
+  medianSE: number;
+  fractions: Fraction[];
+  edges: number[];
+  counts: number[];
+}
+
+export interface Traces {
+  timeNS: number[];
+  real: number[];
+  imag: number[];
+  positionMM: number[];
+  projection: number[];
+  delayUS: number[];
+  echoHeight: number[];
+  gradientMTPerM: [number, number, number];
+}
+
+export interface TracesRequest {
+  delay: number;
+  shot: number;
+}
+
+export interface Requests {
+  open: { body: OpenRequest; reply: Opened };
+  demo: { body: DemoRequest; reply: Opened };
+  traces: { body: TracesRequest; reply: Traces };
+  plan: { body: PlanRequest; reply: Plan };
+  measure: { body: MeasureRequest; reply: Measured };
+  reconstruct: { body: ReconstructRequest; reply: Reconstructed };
+  fit: { body: FitRequest; reply: Fitted };
+  derive: { body: DeriveRequest; reply: Derived };
+  export: { body: ExportRequest; reply: Exported };
+}
