@@ -1,0 +1,286 @@
+package condition
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+
+	"torrloom/recon/acquisition"
+	"torrloom/recon/fault"
+)
+
+// Spokes are conditioned image shots: samples of k-space along unit vectors, at k = m·DeltaK, m = 0..Half.
+//
+// A sample is the Hermitian part of the phased signal, (s(k) + s*(-k))/2: the k-space of the real part of the image,
+// which is where all of a well-phased signal lies. Where only one half of the echo was recorded it is s(k) itself.
+type Spokes struct {
+	Dim        int
+	Directions [][3]float64 // [shot]
+	Shot       []int        // [shot] index in the acquisition
+	DeltaK     float64      // cycles/mm
+	Half       int
+	BandMM     float64 // diameter within which an object is represented; 1/DeltaK is twice that
+
+	Delays  []int       // indices in the acquisition
+	Samples []complex64 // [shot][m][delay]
+
+	// NoiseDensity is, per delay, the variance of one channel of noise in k-space per unit of 1/k: a projection
+	// Σ f(k) s(k) exp(i2πkx) dk over both halves has the noise variance NoiseDensity·∫f² dk in its real part.
+	NoiseDensity []float64
+	// OneSided is, per shot, the first m for which only one half of the echo was recorded; Half+1 if none. There the
+	// variance counts twice.
+	OneSided []int
+}
+
+// Geometry says which band and which part of k-space are needed.
+type Geometry struct {
+	BandMM float64 // at least the field of view and the object
+	KCut   float64 // cycles/mm; samples beyond are not made
+}
+
+// Plan returns the geometry for an image of fieldOfViewMM from an object of extentMM: 15 % more than the larger of the
+// two, within what the sampling allows.
+func Plan(a *acquisition.Acquisition, c *Constants, fieldOfViewMM, kCut float64) Geometry {
+	band := 1.15 * math.Max(fieldOfViewMM, c.ExtentMM)
+	return Geometry{BandMM: math.Min(band, math.Max(a.AliasFreeMM(), fieldOfViewMM)), KCut: kCut}
+}
+
+// Bytes returns the memory that the samples of delays delays will take.
+func (g Geometry) Bytes(a *acquisition.Acquisition, delays int) int64 {
+	return int64(len(a.ImageShots())) * int64(g.half()+1) * int64(delays) * 8
+}
+
+func (g Geometry) half() int { return max(1, int(math.Floor(g.KCut*2*g.BandMM*(1+1e-9)))) }
+
+// Condition returns the spokes of the given delays, and warnings.
+//
+// Errors: those of Measure; bad-setting when the geometry asks for nothing.
+func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry, delays []int) (*Spokes, []string, error) {
+	if err := checkUsable(a, s); err != nil {
+		return nil, nil, err
+	}
+	if !(g.BandMM > 0) || !(g.KCut > 0) {
+		return nil, nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
+	}
+	sp := newSpokes(a, g, delays)
+	for _, d := range delays {
+		sp.NoiseDensity = append(sp.NoiseDensity, noiseDensity(a, c, d))
+	}
+	reader := newReader(a, s, c, sp)
+	for i := range sp.Shot {
+		if err := reader.fill(i); err != nil {
+			return nil, nil, err
+		}
+	}
+	return sp, sp.warnings(a), nil
+}
+
+func newSpokes(a *acquisition.Acquisition, g Geometry, delays []int) *Spokes {
+	sp := &Spokes{Dim: a.Dim, DeltaK: 1 / (2 * g.BandMM), Half: g.half(), BandMM: g.BandMM, Delays: delays, Shot: a.ImageShots()}
+	sp.Samples = make([]complex64, len(sp.Shot)*(sp.Half+1)*len(delays))
+	sp.OneSided = make([]int, len(sp.Shot))
+	for _, s := range sp.Shot {
+		n, strength := a.GradientMTPerM[s], a.Strength(s)
+		sp.Directions = append(sp.Directions, [3]float64{n[0] / strength, n[1] / strength, n[2] / strength})
+	}
+	return sp
+}
+
+// noiseDensity follows from one raw sample standing for dk (or, of a projection, for its step in position). Shots of
+// different gradient strength differ in it; the mean strength is used.
+func noiseDensity(a *acquisition.Acquisition, c *Constants, d int) float64 {
+	v := c.NoiseSD[d] * c.NoiseSD[d]
+	if a.Domain == acquisition.Projection {
+		return v * a.PositionStepMM
+	}
+	sum, shots := 0.0, a.ImageShots()
+	for _, s := range shots {
+		sum += a.Strength(s)
+	}
+	return v * acquisition.KPerNS(sum/float64(len(shots)), a.DwellNS)
+}
+
+// Row returns the samples of one shot and m, over the delays, without copying.
+func (sp *Spokes) Row(shot, m int) []complex64 {
+	at := (shot*(sp.Half+1) + m) * len(sp.Delays)
+	return sp.Samples[at : at+len(sp.Delays) : at+len(sp.Delays)]
+}
+
+func (sp *Spokes) warnings(a *acquisition.Acquisition) []string {
+	least := sp.Half + 1
+	for _, m := range sp.OneSided {
+		least = min(least, m)
+	}
+	if a.Domain == acquisition.Time && least <= sp.Half {
+		k := float64(least-1) * sp.DeltaK
+		return []string{fmt.Sprintf("only one half of the echo reaches beyond k = %.3g cycles/mm; the other half is taken as its mirror (Hermitian symmetry)", math.Max(k, 0))}
+	}
+	return nil
+}
+
+// reader fills spokes from traces or projections. Shots of equal gradient strength share one resampler.
+type reader struct {
+	a          *acquisition.Acquisition
+	sp         *Spokes
+	turn       complex128
+	offset     complex128
+	baseline   [][]complex64 // [delay of sp][sample], nil when none
+	zero       float64
+	beta       float64
+	resamplers map[int64]*Resampler
+	waves      []complex128 // [m][sample] of a projection's transform
+	work       []complex64
+}
+
+func newReader(a *acquisition.Acquisition, s Settings, c *Constants, sp *Spokes) *reader {
+	r := &reader{a: a, sp: sp, zero: a.TimeZeroSample + s.TimeShiftSamples, resamplers: map[int64]*Resampler{},
+		turn: cmplx.Rect(1, -c.PhaseRad), offset: complex(c.OffsetReal, c.OffsetImag), work: make([]complex64, a.Samples)}
+	// Above four fifths of the alias-free field the band is narrowed to the object, to leave the interpolation room.
+	band := math.Min(sp.BandMM, math.Max(1.1*c.ExtentMM, 0.8*a.AliasFreeMM()))
+	r.beta = math.Min(1, band/a.AliasFreeMM())
+	if s.Offset == "baseline-shots" {
+		r.baseline = baselines(a, sp.Delays)
+	}
+	if a.Domain == acquisition.Projection {
+		r.waves = projectionWaves(a, sp, r.zero)
+	}
+	return r
+}
+
+func baselines(a *acquisition.Acquisition, delays []int) [][]complex64 {
+	shots := a.BaselineShots()
+	out := make([][]complex64, len(delays))
+	for i, d := range delays {
+		out[i] = make([]complex64, a.Samples)
+		for _, s := range shots {
+			for j, v := range a.Trace(d, s) {
+				out[i][j] += v / complex(float32(len(shots)), 0)
+			}
+		}
+	}
+	return out
+}
+
+// projectionWaves returns step·exp(-i2π k_m x_j): a projection times this is its transform at k_m.
+func projectionWaves(a *acquisition.Acquisition, sp *Spokes, zero float64) []complex128 {
+	out := make([]complex128, 0, (sp.Half+1)*a.Samples)
+	for m := range sp.Half + 1 {
+		for j := range a.Samples {
+			x := (float64(j) - zero) * a.PositionStepMM
+			out = append(out, cmplx.Rect(a.PositionStepMM, -2*math.Pi*float64(m)*sp.DeltaK*x))
+		}
+	}
+	return out
+}
+
+func (r *reader) fill(i int) error {
+	if r.waves != nil {
+		r.fillFromProjection(i)
+		return nil
+	}
+	resampler, err := r.resampler(r.sp.Shot[i])
+	if err != nil {
+		return err
+	}
+	r.sp.OneSided[i] = r.sp.Half + 1
+	for d := range r.sp.Delays {
+		r.loadTrace(i, d)
+		for m := range r.sp.Half + 1 {
+			value, sides := r.hermitian(resampler, m)
+			r.sp.Row(i, m)[d] = complex64(value * r.turn)
+			if sides == 1 {
+				r.sp.OneSided[i] = min(r.sp.OneSided[i], m)
+			}
+		}
+	}
+	return nil
+}
+
+// loadTrace puts the trace of shot i at delay d into work, offset and baseline taken off.
+func (r *reader) loadTrace(i, d int) {
+	for j, v := range r.a.Trace(r.sp.Delays[d], r.sp.Shot[i]) {
+		if r.baseline != nil {
+			v -= r.baseline[d][j]
+		}
+		r.work[j] = v - complex64(r.offset)
+	}
+}
+
+// hermitian returns the Hermitian part of the loaded trace at m before phasing, such that turning it by the phase gives
+// the phased one, and how many halves of the echo it came from.
+func (r *reader) hermitian(rs *Resampler, m int) (complex128, int) {
+	plus, havePlus := rs.Apply(r.sp.Half+m, r.work)
+	minus, haveMinus := rs.Apply(r.sp.Half-m, r.work)
+	mirrored := cmplx.Conj(minus*r.turn) * cmplx.Conj(r.turn)
+	switch {
+	case havePlus && haveMinus:
+		return (plus + mirrored) / 2, 2
+	case havePlus:
+		return plus, 1
+	case haveMinus:
+		return mirrored, 1
+	}
+	return 0, 0
+}
+
+// resampler returns the resampler of a shot's gradient strength; strengths that agree to 1 in 10⁷ share one.
+func (r *reader) resampler(shot int) (*Resampler, error) {
+	strength := r.a.Strength(shot)
+	key := int64(math.Round(math.Log(strength) * 1e7))
+	if rs := r.resamplers[key]; rs != nil {
+		return rs, nil
+	}
+	step := r.sp.DeltaK / acquisition.KPerNS(strength, r.a.DwellNS)
+	at := make([]place, 0, 2*r.sp.Half+1)
+	for m := -r.sp.Half; m <= r.sp.Half; m++ {
+		at = append(at, r.zero+float64(m)*step)
+	}
+	rs, err := NewResampler(r.a.Samples, r.beta, at)
+	if err == nil {
+		r.resamplers[key] = rs
+	}
+	return rs, err
+}
+
+func (r *reader) fillFromProjection(i int) {
+	r.sp.OneSided[i] = r.sp.Half + 1
+	for d := range r.sp.Delays {
+		r.loadTrace(i, d)
+		for m := range r.sp.Half + 1 {
+			var sum complex128
+			for j, w := range r.waves[m*r.a.Samples : (m+1)*r.a.Samples] {
+				sum += w * complex(float64(real(r.work[j])), 0)
+			}
+			r.sp.Row(i, m)[d] = complex64(sum)
+		}
+	}
+}
+
+// NoiseSD returns the predicted SD of noise, per delay, in an image that is linear in the spokes:
+//
+//	Σ_shots axis Σ_m filter_|m| S(m·DeltaK) exp(i2π m·DeltaK n·r)·DeltaK
+//
+// for axis weights per shot and a filter per m. Exact for white noise, up to what an interpolation smooths away.
+func (sp *Spokes) NoiseSD(axis, filter []float64) []float64 {
+	sum := 0.0
+	for i, w := range axis {
+		square := filter[0] * filter[0]
+		for m := 1; m <= sp.Half; m++ {
+			square += float64(2*halves(m, sp.OneSided[i])) * filter[m] * filter[m]
+		}
+		sum += w * w * square * sp.DeltaK
+	}
+	out := make([]float64, len(sp.Delays))
+	for d, density := range sp.NoiseDensity {
+		out[d] = math.Sqrt(density * sum)
+	}
+	return out
+}
+
+// halves returns by how much the noise variance counts: 2 where a single half stands for both.
+func halves(m, oneSided int) int {
+	if m >= oneSided {
+		return 2
+	}
+	return 1
+}
