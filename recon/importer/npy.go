@@ -101,12 +101,11 @@ func checkBody(header npyText, layout acquisition.Layout, offset, have int) erro
 
 // parseDescr returns the layout of a type string such as "<c8", "|S5" or ">U7".
 func parseDescr(descr string) (acquisition.Layout, error) {
+	if strings.HasPrefix(descr, "|O") {
+		return acquisition.Layout{}, fault.New(fault.Unsupported, "header", "an array of Python objects; save plain numbers or text, for instance with numpy.asarray(x, dtype=float)")
+	}
 	if len(descr) < 3 || !strings.Contains("<>|=", descr[:1]) {
 		return acquisition.Layout{}, fault.New(fault.BadFile, "header", "type %q is not a byte order, a letter and a size", descr)
-	}
-	kind := acquisition.ElementKind(descr[1])
-	if kind == 'O' {
-		return acquisition.Layout{}, fault.New(fault.Unsupported, "header", "an array of Python objects; save plain numbers or text, for instance with numpy.asarray(x, dtype=float)")
 	}
 	if !strings.Contains("biufcSU", descr[1:2]) {
 		return acquisition.Layout{}, fault.New(fault.Unsupported, "header", "type %q; use bool, integers, floats, complex numbers or text", descr)
@@ -115,6 +114,7 @@ func parseDescr(descr string) (acquisition.Layout, error) {
 	if err != nil || size < 1 || descr[2] == '+' {
 		return acquisition.Layout{}, fault.New(fault.BadFile, "header", "type %q has no size that can be", descr)
 	}
+	kind := acquisition.ElementKind(descr[1])
 	if kind == acquisition.Text {
 		size *= 4
 	}
