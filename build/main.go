@@ -20,6 +20,7 @@ type verb struct {
 
 var verbs = []verb{
 	{"site", "write out/torrloom.html", runSite},
+	{"serve", "make it and serve it on this machine; -port N", runServe},
 }
 
 func main() {
