@@ -1,23 +1,35 @@
-// Package recipe holds every setting of the chain as one JSON document: defaults, check, catalogue and hash. Same data
-// and same recipe give the same numbers.
+// Package recipe holds every setting of the chain as one JSON document: defaults, check and catalogue. Same data and
+// same recipe give the same numbers.
 //
-// To add a setting: a field in a struct here and a row in Catalogue; the page draws its form from that row.
+// To add a setting: a field in a struct here and a row in Catalogue; the page draws its form from that row, and the
+// check and the tests range over it.
 package recipe
+
+import (
+	"math"
+
+	"torrloom/recon/acquisition"
+	"torrloom/recon/condition"
+	"torrloom/recon/oxygen"
+)
+
+// Version is the format version of a recipe.
+const Version = 1
 
 // Recipe is the whole chain. A nil Calibration means that the rate map is made and the pO2 map is not.
 type Recipe struct {
-	Recipe         int            `json:"recipe"` // format version, 1
-	Conditioning   Conditioning   `json:"conditioning"`
-	Reconstruction Reconstruction `json:"reconstruction"`
-	Rates          Rates          `json:"rates"`
-	Calibration    *Calibration   `json:"calibration,omitempty"`
-	Mask           Mask           `json:"mask"`
+	Recipe         int                 `json:"recipe"`
+	Conditioning   Conditioning        `json:"conditioning"`
+	Reconstruction Reconstruction      `json:"reconstruction"`
+	Rates          Rates               `json:"rates"`
+	Calibration    *oxygen.Calibration `json:"calibration,omitempty"`
+	Mask           Mask                `json:"mask"`
 }
 
 // Conditioning prepares the traces.
 type Conditioning struct {
 	Offset           string  `json:"offset"`           // row of condition.Offsets
-	Phase            string  `json:"phase"`            // "reference-delay" or "none"
+	Phase            string  `json:"phase"`            // row of condition.Phases
 	TimeShiftSamples float64 `json:"timeShiftSamples"` // added to the file's time zero
 }
 
@@ -36,36 +48,49 @@ type Rates struct {
 	MaxPerUS float64 `json:"maxPerUS"`
 }
 
-// Calibration is pO2 = (R - zero)/slope.
-type Calibration struct {
-	Rate              string  `json:"rate"` // "R1" or "R2"
-	ZeroPerUS         float64 `json:"zeroPerUS"`
-	SlopePerUSPerTorr float64 `json:"slopePerUSPerTorr"`
-}
-
 // Mask keeps voxels whose reference-delay amplitude is at least a fraction of the image's strongest amplitude.
 type Mask struct {
 	AmplitudeFraction float64 `json:"amplitudeFraction"`
 }
 
-// Setting describes one leaf of the recipe for a form and for the check.
-type Setting struct {
-	Path    string   `json:"path"`  // "reconstruction.window"
-	Group   string   `json:"group"` // heading of the form
-	Label   string   `json:"label"`
-	Unit    string   `json:"unit"`
-	Kind    string   `json:"kind"` // "number", "integer" or "choice"
-	Min     float64  `json:"min"`
-	Max     float64  `json:"max"`
-	Step    float64  `json:"step"`
-	Choices []Choice `json:"choices"`
-	Help    string   `json:"help"`
-	Stage   string   `json:"stage"` // first stage that is redone: "measure", "reconstruct", "fit" or "derive"
+// Defaults returns the recipe a new acquisition starts with. extentMM is the measured diameter of the object.
+//
+// The field of view leaves a tenth around the object. The matrix is the smallest of a few round sizes whose voxel is at
+// most two thirds of the nominal resolution 1/(2 k_max). The calibration is the file's own, if it carries one.
+func Defaults(a *acquisition.Acquisition, extentMM float64) Recipe {
+	conditioning := condition.Defaults()
+	field := math.Ceil(math.Min(1.1*extentMM, a.AliasFreeMM()))
+	return Recipe{
+		Recipe:       Version,
+		Conditioning: Conditioning{Offset: conditioning.Offset, Phase: conditioning.Phase},
+		Reconstruction: Reconstruction{Method: "back-projection", Window: "hann", Cutoff: 1, FieldOfViewMM: field,
+			Matrix: defaultMatrix(a, field)},
+		Calibration: fileCalibration(a),
+		Mask:        Mask{AmplitudeFraction: 0.2},
+	}
 }
 
-// Choice is one value of a setting of kind "choice".
-type Choice struct {
-	Value string `json:"value"`
-	Label string `json:"label"`
-	Help  string `json:"help"`
+func defaultMatrix(a *acquisition.Acquisition, fieldOfViewMM float64) int {
+	sizes := []int{32, 48, 64}
+	if a.Dim == 2 {
+		sizes = []int{64, 96, 128, 192, 256}
+	}
+	resolution := 1 / (2 * a.SmallestKMax())
+	for _, n := range sizes {
+		if fieldOfViewMM/float64(n) <= resolution*2/3 {
+			return n
+		}
+	}
+	return sizes[len(sizes)-1]
+}
+
+func fileCalibration(a *acquisition.Acquisition) *oxygen.Calibration {
+	zero, slope := a.Optional.R2ZeroPerUS, a.Optional.R2SlopePerUSPerTorr
+	if a.Recovers() {
+		zero, slope = a.Optional.R1ZeroPerUS, a.Optional.R1SlopePerUSPerTorr
+	}
+	if zero == nil || slope == nil {
+		return nil
+	}
+	return &oxygen.Calibration{Rate: a.RateName(), ZeroPerUS: *zero, SlopePerUSPerTorr: *slope}
 }
