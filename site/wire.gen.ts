@@ -28,15 +28,6 @@ export interface DeriveRequest {
   recipe: Recipe;
 }
 
-export interface Derived {
-  maskLevel: number;
-  fates: FateCount[];
-  rate: Summary;
-  pO2: Summary | null;
-  negative: number;
-  warnings: string[];
-}
-
 export interface ExportRequest {
   recipe: Recipe;
   quantity: string;
@@ -117,6 +108,15 @@ export interface Measured {
   warnings: string[];
 }
 
+export interface Numbers {
+  maskLevel: number;
+  fates: FateCount[];
+  rate: Summary;
+  pO2: Summary | null;
+  negative: number;
+  warnings: string[];
+}
+
 export interface OpenRequest {
   names: string[];
 }
@@ -171,7 +171,7 @@ export interface Plan {
   originMM: [number, number, number];
   memoryBytes: number;
   reconstructJobs: number[][];
-  fitJobs: ([number, number])[];
+  fitJobs: [number, number][];
   referenceDelay: number;
   warnings: string[];
 }
@@ -245,6 +245,8 @@ export interface Summary {
   fractions: Fraction[];
   edges: number[];
   counts: number[];
+  below: number;
+  above: number;
 }
 
 export interface Traces {
@@ -271,6 +273,6 @@ export interface Requests {
   measure: { body: MeasureRequest; reply: Measured };
   reconstruct: { body: ReconstructRequest; reply: Reconstructed };
   fit: { body: FitRequest; reply: Fitted };
-  derive: { body: DeriveRequest; reply: Derived };
+  derive: { body: DeriveRequest; reply: Numbers };
   export: { body: ExportRequest; reply: Exported };
 }

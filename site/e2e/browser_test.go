@@ -232,15 +232,25 @@ func (p *page) demandSilence() {
 	}
 }
 
-// hearWorkers attaches to the workers of the page, which then repeat their console lines. A worker that ends meanwhile
-// has nothing more to say.
+// hearWorkers attaches to the workers of the page, which then repeat their console lines.
 func (p *page) hearWorkers() {
 	p.t.Helper()
 	for _, id := range p.workers() {
-		if err := p.hearWorker(id); err != nil && slices.Contains(p.workers(), id) {
+		if err := p.hearWorker(id); err != nil && !p.ends(id) {
 			p.t.Fatalf("listen to worker %s: %v", id, err)
 		}
 	}
+}
+
+// ends tells whether a worker ends by itself: the browser lists one that was stopped for some seconds more.
+func (p *page) ends(id target.ID) bool {
+	p.t.Helper()
+	for end := time.Now().Add(patience); time.Now().Before(end); time.Sleep(100 * time.Millisecond) {
+		if !slices.Contains(p.workers(), id) {
+			return true
+		}
+	}
+	return false
 }
 
 func (p *page) workers() []target.ID {

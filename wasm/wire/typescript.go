@@ -96,7 +96,7 @@ func (s *script) nameOf(t reflect.Type) string {
 }
 
 func arrayOf(element string) string {
-	if strings.Contains(element, " ") {
+	if strings.Contains(element, "| ") {
 		return "(" + element + ")[]"
 	}
 	return element + "[]"
