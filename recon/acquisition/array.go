@@ -49,7 +49,10 @@ func (l Layout) check() error {
 		ok = l.Size >= 4 && l.Size%4 == 0
 	}
 	if !ok {
-		return fault.New(fault.Unsupported, "", "elements of kind %q with %d bytes; use bool, integers of 1 to 8 bytes, float16 to float64, complex64, complex128 or text", string(l.Kind), l.Size)
+		return fault.New(fault.Unsupported,
+			"",
+			"elements of kind %q with %d bytes; use bool, integers of 1 to 8 bytes, float16 to float64, "+
+				"complex64, complex128 or text", string(l.Kind), l.Size)
 	}
 	return nil
 }
@@ -88,7 +91,8 @@ func NewArray(name string, shape []int, layout Layout, raw []byte) (Array, error
 		return Array{}, fault.Within(name, err)
 	}
 	if !fills(shape, len(raw), layout.Size) {
-		return Array{}, fault.New(fault.BadFile, name, "%d bytes for %s of shape %s; each element takes %d bytes", len(raw), layout.Word(), ShapeText(shape), layout.Size)
+		return Array{}, fault.New(fault.BadFile, name,
+			"%d bytes for %s of shape %s; each element takes %d bytes", len(raw), layout.Word(), ShapeText(shape), layout.Size)
 	}
 	// An empty list, unlike none, stays a list in JSON.
 	return Array{Name: name, Type: layout.Word(), Shape: append([]int{}, shape...), layout: layout, raw: raw}, nil

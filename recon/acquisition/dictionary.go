@@ -42,7 +42,8 @@ type binding struct {
 var Dictionary = []Field{
 	{"domain", "text: time or projection", "", Optionally, "what a row of the signal is; time when absent",
 		word(func(a *Acquisition) *Domain { return &a.Domain })},
-	{"signal", "complex [delay, shot, sample], or [shot, sample] for one delay", "", Always, "quadrature traces (complex, or real and imaginary part along a last axis of 2), or real projections",
+	{"signal", "complex [delay, shot, sample], or [shot, sample] for one delay", "", Always,
+		"quadrature traces (complex, or real and imaginary part along a last axis of 2), or real projections",
 		binding{readSignal, writeSignal}},
 	{"gradient_mT_per_m", "real [shot, 3] or [shot, 2]", "mT/m", Always, "gradient vector of each shot",
 		binding{readGradient, writeGradient}},
@@ -50,7 +51,8 @@ var Dictionary = []Field{
 		vector(func(a *Acquisition) *[]float64 { return &a.DelayUS })},
 	{"dwell_ns", "real number", "ns", ForTraces, "sampling interval",
 		number(func(a *Acquisition) *float64 { return &a.DwellNS })},
-	{"time_zero_sample", "real number", "", Always, "sample index at which k, or the position, is zero; may be fractional or negative",
+	{"time_zero_sample", "real number", "", Always,
+		"sample index at which k, or the position, is zero; may be fractional or negative",
 		number(func(a *Acquisition) *float64 { return &a.TimeZeroSample })},
 	{"sequence", "text: inversion-recovery, saturation-recovery, echo-decay or free-decay", "", Always, "what the delay axis means",
 		word(func(a *Acquisition) *Sequence { return &a.Sequence })},
@@ -96,7 +98,8 @@ func FromArrays(name string, arrays []Array) (*Acquisition, []string, error) {
 	var warnings []string
 	for _, array := range arrays {
 		if _, twice := members[array.Name]; twice {
-			return nil, warnings, fault.New(fault.BadFile, name, "two arrays are named %s; each field may stand once", quoted(array.Name))
+			return nil, warnings, fault.New(fault.BadFile, name,
+				"two arrays are named %s; each field may stand once", quoted(array.Name))
 		}
 		members[array.Name] = array
 		warnings = append(warnings, doubts(array)...)
@@ -154,7 +157,8 @@ func doubts(array Array) (warnings []string) {
 	}
 	if known && array.LooksSwapped() {
 		least, most := array.Range()
-		warnings = append(warnings, fmt.Sprintf("%s: values from %.3g to %.3g; its byte order may be wrong, check how it was written", array.Name, least, most))
+		warnings = append(warnings, fmt.Sprintf("%s: values from %.3g to %.3g; its byte order may be wrong, check how it was written",
+			array.Name, least, most))
 	}
 	return warnings
 }
@@ -171,7 +175,8 @@ func missing(domain Domain, members map[string]Array) error {
 	if len(lacking) == 0 {
 		return nil
 	}
-	return fault.New(fault.BadFile, "", "missing %s; found %s; add what is missing or rename what is there", strings.Join(lacking, ", "), found(members))
+	return fault.New(fault.BadFile,
+		"", "missing %s; found %s; add what is missing or rename what is there", strings.Join(lacking, ", "), found(members))
 }
 
 // found lists the names in a file, at most 30 of them.
@@ -249,11 +254,12 @@ func editDistance(a, b string) int {
 // checkUnit returns a fault when the file states a unit other than the one in the field's name. It is not converted:
 // a file that contradicts itself may be wrong in either place.
 func (f Field) checkUnit(array Array) error {
-	stated := strings.NewReplacer("µ", "u", "μ", "u", " ", "").Replace(array.Unit)
-	if stated == "" || f.Unit == "" || stated == f.Unit || f.Unit == "degC" && (stated == "C" || stated == "°C" || stated == "Cel") {
+	stated := strings.NewReplacer("µ", "u", "μ", "u", " ", "", "°C", "degC", "Cel", "degC").Replace(array.Unit)
+	if stated == "" || f.Unit == "" || stated == f.Unit {
 		return nil
 	}
-	return fault.New(fault.BadFile, f.Name, "unit %s stated, the field is in %s; convert the values or correct the unit", quoted(array.Unit), f.Unit)
+	return fault.New(fault.BadFile, f.Name,
+		"unit %s stated, the field is in %s; convert the values or correct the unit", quoted(array.Unit), f.Unit)
 }
 
 func readSignal(a *Acquisition, array Array) error {
@@ -265,7 +271,8 @@ func readSignal(a *Acquisition, array Array) error {
 		shape = []int{1, shape[0], shape[1]}
 	}
 	if len(shape) != 3 {
-		return fault.New(fault.BadFile, array.Name, "shape %s found; [delay, shot, sample] wanted, or [shot, sample] for one delay", ShapeText(array.Shape))
+		return fault.New(fault.BadFile, array.Name,
+			"shape %s found; [delay, shot, sample] wanted, or [shot, sample] for one delay", ShapeText(array.Shape))
 	}
 	a.Signal, a.Delays, a.Shots, a.Samples = values, shape[0], shape[1], shape[2]
 	return nil
@@ -276,12 +283,16 @@ func signalValues(domain Domain, array Array) ([]complex64, []int, error) {
 	last := len(array.Shape) - 1
 	switch {
 	case domain == Projection && array.isComplex():
-		return nil, nil, fault.New(fault.BadFile, array.Name, "%s found; projections are real, give their real part after phasing", array.Type)
+		return nil, nil, fault.New(fault.BadFile, array.Name,
+			"%s found; projections are real, give their real part after phasing", array.Type)
 	case domain == Projection || array.isComplex() || array.isText():
 		values, err := array.Complex64s()
 		return values, array.Shape, err
 	case last < 0 || array.Shape[last] != 2:
-		return nil, nil, fault.New(fault.BadFile, array.Name, "%s of shape %s found; traces are complex, or real with real and imaginary part along a last axis of 2; real projections need domain \"projection\"", array.Type, ShapeText(array.Shape))
+		return nil, nil, fault.New(fault.BadFile, array.Name,
+			"%s of shape %s found; traces are complex, or have real and imaginary part along a last axis of 2; "+
+				"real projections need domain \"projection\"",
+			array.Type, ShapeText(array.Shape))
 	}
 	parts, err := array.Float64s()
 	if err != nil {
@@ -316,7 +327,10 @@ func (a *Acquisition) checkAxisOrder() error {
 	have := []int{a.Delays, a.Shots, a.Samples}
 	for _, order := range [][3]int{{0, 2, 1}, {1, 0, 2}, {1, 2, 0}, {2, 0, 1}, {2, 1, 0}} {
 		if have[order[0]] == delays && have[order[1]] == shots {
-			return fault.New(fault.BadFile, "signal", "shape %s found; %d delays and %d gradients want [%d, %d, sample]; its axes seem to be in another order, transpose them", ShapeText(have), delays, shots, delays, shots)
+			return fault.New(fault.BadFile,
+				"signal",
+				"shape %s found; %d delays and %d gradients want [%d, %d, sample]; "+
+					"its axes seem to be in another order, transpose them", ShapeText(have), delays, shots, delays, shots)
 		}
 	}
 	return nil
@@ -324,7 +338,8 @@ func (a *Acquisition) checkAxisOrder() error {
 
 func readGradient(a *Acquisition, array Array) error {
 	if len(array.Shape) != 2 || array.Shape[1] != 2 && array.Shape[1] != 3 {
-		return fault.New(fault.BadFile, array.Name, "shape %s found; [shot, 3] wanted, or [shot, 2] in 2D", ShapeText(array.Shape))
+		return fault.New(fault.BadFile, array.Name,
+			"shape %s found; [shot, 3] wanted, or [shot, 2] in 2D", ShapeText(array.Shape))
 	}
 	values, err := array.Float64s()
 	if err != nil {

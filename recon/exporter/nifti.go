@@ -89,7 +89,8 @@ func headerFor(g volume.Grid, values int, description string) (niftiHeader, erro
 	h.Pixdim[0] = 1 // qfac: right-handed
 	for axis, n := range g.N {
 		if n > niftiMaxLength {
-			return niftiHeader{}, fault.New(fault.TooLarge, "NIfTI", "%d voxels along an axis, the format holds %d", n, niftiMaxLength)
+			return niftiHeader{}, fault.New(fault.TooLarge,
+				"NIfTI", "%d voxels along an axis, the format holds %d", n, niftiMaxLength)
 		}
 		h.Dim[axis+1] = int16(n)
 		h.Pixdim[axis+1] = float32(g.VoxelMM[axis])

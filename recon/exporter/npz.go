@@ -41,7 +41,8 @@ func MapNPZ(w io.Writer, m volume.Map) error {
 	if err != nil {
 		return err
 	}
-	return WriteNPZ(w, []acquisition.Array{values, affine, acquisition.TextOf("quantity", m.Name), acquisition.TextOf("unit", m.Unit)})
+	quantity, unit := acquisition.TextOf("quantity", m.Name), acquisition.TextOf("unit", m.Unit)
+	return WriteNPZ(w, []acquisition.Array{values, affine, quantity, unit})
 }
 
 // WriteNPZ writes arrays as a compressed NumPy archive in the given order, each in its own byte order and layout.
@@ -52,7 +53,8 @@ func WriteNPZ(w io.Writer, arrays []acquisition.Array) error {
 	seen := map[string]bool{"": true}
 	for _, array := range arrays {
 		if seen[array.Name] {
-			return fault.New(fault.BadSetting, "NumPy archive", "name %q stands twice or is empty; each array needs a name of its own", array.Name)
+			return fault.New(fault.BadSetting,
+				"NumPy archive", "name %q stands twice or is empty; each array needs a name of its own", array.Name)
 		}
 		seen[array.Name] = true
 		// A header without a time keeps the bytes the same.

@@ -72,7 +72,8 @@ func recognise(name string, data []byte) (Format, error) {
 		}
 		known = append(known, fmt.Sprintf("%s (%s)", f.Name, strings.Join(f.Extensions, ", ")))
 	}
-	return Format{}, fault.New(fault.Unsupported, name, "begins with bytes % x, which no known format does; use %s", head[:min(len(head), 8)], strings.Join(known, " or "))
+	return Format{}, fault.New(fault.Unsupported, name,
+		"begins with bytes % x, which no known format does; use %s", head[:min(len(head), 8)], strings.Join(known, " or "))
 }
 
 // guarded reads with the file's name put before the place of a fault, and a panic of the reader made a bug fault.

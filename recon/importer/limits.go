@@ -47,7 +47,10 @@ func (l Limits) checkShape(shape []int) error {
 			return fault.New(fault.BadFile, "", "shape %s has a negative length", acquisition.ShapeText(shape))
 		}
 		if int64(n) > l.Elements/elements {
-			return fault.New(fault.TooLarge, "", "shape %s has more elements than the limit of %d; split it or keep fewer shots or delays", acquisition.ShapeText(shape), l.Elements)
+			return fault.New(fault.TooLarge,
+				"",
+				"shape %s has more elements than the limit of %d; split it or keep fewer shots or delays",
+				acquisition.ShapeText(shape), l.Elements)
 		}
 		elements *= int64(max(n, 1))
 	}
@@ -68,12 +71,15 @@ func (l Limits) checkUnpacked(stated []uint64, archive int64) error {
 	total := int64(0)
 	for _, n := range stated {
 		if n > uint64(l.UnpackedBytes-total) {
-			return fault.New(fault.TooLarge, "", "the members unpack to more than the limit of %.1f GiB; keep fewer shots or delays", float64(l.UnpackedBytes)/(1<<30))
+			return fault.New(fault.TooLarge,
+				"",
+				"the members unpack to more than the limit of %.1f GiB; keep fewer shots or delays", float64(l.UnpackedBytes)/(1<<30))
 		}
 		total += int64(n)
 	}
 	if total > l.Ratio*archive {
-		return fault.New(fault.TooLarge, "", "%d bytes unpack to %d, more than %d:1; write it without compression if that is meant", archive, total, l.Ratio)
+		return fault.New(fault.TooLarge,
+			"", "%d bytes unpack to %d, more than %d:1; write it without compression if that is meant", archive, total, l.Ratio)
 	}
 	return nil
 }

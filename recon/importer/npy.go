@@ -63,7 +63,8 @@ func npyHeader(data []byte, limits Limits) (string, []byte, error) {
 	}
 	start := versionEnd + lengthBytes
 	if len(data) < start {
-		return "", nil, fault.New(fault.BadFile, "byte "+strconv.Itoa(len(data)), "ends within the first %d bytes; the file may be cut short", start)
+		return "", nil, fault.New(fault.BadFile, "byte "+strconv.Itoa(len(data)),
+			"ends within the first %d bytes; the file may be cut short", start)
 	}
 	if major := data[6]; major < 1 || major > 3 {
 		return "", nil, fault.New(fault.Unsupported, "byte 6", "NPY version %d.%d; versions 1 to 3 are read", major, data[7])
@@ -76,7 +77,8 @@ func npyHeader(data []byte, limits Limits) (string, []byte, error) {
 		return "", nil, err
 	}
 	if stated > int64(len(data)-start) {
-		return "", nil, fault.New(fault.BadFile, "byte "+strconv.Itoa(len(data)), "ends within a header of %d bytes; the file may be cut short", stated)
+		return "", nil, fault.New(fault.BadFile, "byte "+strconv.Itoa(len(data)),
+			"ends within a header of %d bytes; the file may be cut short", stated)
 	}
 	end := start + int(stated)
 	return string(data[start:end]), data[end:], nil
@@ -92,9 +94,11 @@ func checkBody(header npyText, layout acquisition.Layout, offset, have int) erro
 	shape, word := acquisition.ShapeText(header.shape), layout.Word()
 	switch {
 	case uint64(have) < want:
-		return fault.New(fault.BadFile, "byte "+strconv.Itoa(offset+have), "ends after %d bytes of values, %s of shape %s takes %d; the file may be cut short", have, word, shape, want)
+		return fault.New(fault.BadFile, "byte "+strconv.Itoa(offset+have),
+			"ends after %d bytes of values, %s of shape %s takes %d; the file may be cut short", have, word, shape, want)
 	case uint64(have) > want:
-		return fault.New(fault.BadFile, "byte "+strconv.FormatUint(uint64(offset)+want, 10), "%d bytes follow the values, %s of shape %s takes %d", uint64(have)-want, word, shape, want)
+		return fault.New(fault.BadFile, "byte "+strconv.FormatUint(uint64(offset)+want, 10),
+			"%d bytes follow the values, %s of shape %s takes %d", uint64(have)-want, word, shape, want)
 	}
 	return nil
 }
@@ -102,13 +106,15 @@ func checkBody(header npyText, layout acquisition.Layout, offset, have int) erro
 // parseDescr returns the layout of a type string such as "<c8", "|S5" or ">U7".
 func parseDescr(descr string) (acquisition.Layout, error) {
 	if strings.HasPrefix(descr, "|O") {
-		return acquisition.Layout{}, fault.New(fault.Unsupported, "header", "an array of Python objects; save plain numbers or text, for instance with numpy.asarray(x, dtype=float)")
+		return acquisition.Layout{}, fault.New(fault.Unsupported,
+			"header", "an array of Python objects; save plain numbers or text, for instance with numpy.asarray(x, dtype=float)")
 	}
 	if len(descr) < 3 || !strings.Contains("<>|=", descr[:1]) {
 		return acquisition.Layout{}, fault.New(fault.BadFile, "header", "type %q is not a byte order, a letter and a size", descr)
 	}
 	if !strings.Contains("biufcSU", descr[1:2]) {
-		return acquisition.Layout{}, fault.New(fault.Unsupported, "header", "type %q; use bool, integers, floats, complex numbers or text", descr)
+		return acquisition.Layout{}, fault.New(fault.Unsupported,
+			"header", "type %q; use bool, integers, floats, complex numbers or text", descr)
 	}
 	size, err := strconv.ParseInt(descr[2:], 10, 32)
 	if err != nil || size < 1 || descr[2] == '+' {
@@ -238,7 +244,8 @@ func (s *scanner) quoted() string {
 
 func (s *scanner) descr() string {
 	if rest := s.rest(); strings.HasPrefix(rest, "[") || strings.HasPrefix(rest, "(") {
-		s.fault = fault.New(fault.Unsupported, "header", "a structured type with named or nested parts; save each part as an array of its own")
+		s.fault = fault.New(fault.Unsupported,
+			"header", "a structured type with named or nested parts; save each part as an array of its own")
 		return ""
 	}
 	return s.quoted()

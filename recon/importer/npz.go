@@ -50,7 +50,8 @@ func readNPZ(_ string, data []byte, limits Limits) ([]acquisition.Array, error) 
 func openZIP(data []byte) (*zip.Reader, error) {
 	archive, err := zip.NewReader(bytes.NewReader(data), int64(len(data)))
 	if err != nil {
-		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)), "ends without a readable directory of members (%v); the file may be cut short", err)
+		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)),
+			"ends without a readable directory of members (%v); the file may be cut short", err)
 	}
 	const endBytes = 22 // length of the closing record without its comment
 	end := len(data) - endBytes - len(archive.Comment)
@@ -81,7 +82,8 @@ func checkMembers(members []*zip.File, archive int64, limits Limits) error {
 			return fault.New(fault.Unsupported, memberName(m), "is encrypted; save it without a password")
 		}
 		if m.Method != zip.Store && m.Method != zip.Deflate {
-			return fault.New(fault.Unsupported, memberName(m), "is packed by ZIP method %d; use numpy.savez or numpy.savez_compressed", m.Method)
+			return fault.New(fault.Unsupported, memberName(m),
+				"is packed by ZIP method %d; use numpy.savez or numpy.savez_compressed", m.Method)
 		}
 	}
 	return limits.checkUnpacked(stated, archive)
@@ -112,11 +114,14 @@ func unpack(member *zip.File) ([]byte, error) {
 	defer from.Close()
 	data := make([]byte, member.UncompressedSize64)
 	if _, err := io.ReadFull(from, data); err != nil {
-		return nil, fault.New(fault.BadFile, where, "does not unpack to the %d bytes stated (%v); the archive may be damaged", len(data), err)
+		return nil, fault.New(fault.BadFile, where,
+			"does not unpack to the %d bytes stated (%v); the archive may be damaged", len(data), err)
 	}
 	// The checksum is compared when the end is read; a byte more than stated is a fault too.
 	if n, err := from.Read(make([]byte, 1)); n != 0 || !errors.Is(err, io.EOF) {
-		return nil, fault.New(fault.BadFile, where, "unpacks to something else than stated (%d bytes and checksum %08x); the archive may be damaged", len(data), member.CRC32)
+		return nil, fault.New(fault.BadFile, where,
+			"unpacks to something else than stated (%d bytes and checksum %08x); the archive may be damaged",
+			len(data), member.CRC32)
 	}
 	return data, nil
 }
