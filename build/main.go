@@ -21,6 +21,7 @@ type verb struct {
 var verbs = []verb{
 	{"site", "write out/torrloom.html", runSite},
 	{"serve", "make it and serve it on this machine; -port N", runServe},
+	{"check", "run every test", runCheck},
 }
 
 func main() {
