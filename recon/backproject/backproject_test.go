@@ -34,7 +34,7 @@ func reconstructSampled(t testing.TB, a *acquisition.Acquisition, matrix int, fi
 	for d := range delays {
 		delays[d] = d
 	}
-	sp, _, err := condition.Condition(a, s, c, condition.Plan(a, c, fieldOfViewMM, kCut), delays)
+	sp, err := condition.Condition(a, s, c, condition.Plan(a, c, fieldOfViewMM, kCut), delays)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -28,7 +28,7 @@ func Measure(a *acquisition.Acquisition, s Settings) (*Constants, []string, erro
 	if err := checkUsable(a, s); err != nil {
 		return nil, nil, err
 	}
-	var warnings []string
+	warnings := halfEchoWarning(a, s)
 	c := &Constants{}
 	spectra := newSpectra(a)
 	c.ExtentMM = spectra.extent(a.ReferenceDelay())
@@ -55,6 +55,17 @@ func Measure(a *acquisition.Acquisition, s Settings) (*Constants, []string, erro
 		warnings = append(warnings, fmt.Sprintf("the object reaches across the whole alias-free field of view (%.3g mm); it may be folded over", a.AliasFreeMM()))
 	}
 	return c, warnings, nil
+}
+
+// halfEchoWarning says from where on the image rests on one half of the echo. Two samples of difference are no loss.
+func halfEchoWarning(a *acquisition.Acquisition, s Settings) []string {
+	before := a.TimeZeroSample + s.TimeShiftSamples
+	after := float64(a.Samples-1) - before
+	if a.Domain == acquisition.Projection || math.Abs(after-before) <= 2 {
+		return nil
+	}
+	share := 100 * math.Min(before, after) / math.Max(before, after)
+	return []string{fmt.Sprintf("one half of the echo is recorded only to %.0f %% of the other; beyond, it is taken as the other's mirror (Hermitian symmetry)", share)}
 }
 
 func checkUsable(a *acquisition.Acquisition, s Settings) error {

@@ -1,7 +1,6 @@
 package condition
 
 import (
-	"fmt"
 	"math"
 	"math/cmplx"
 
@@ -52,15 +51,15 @@ func (g Geometry) Bytes(a *acquisition.Acquisition, delays int) int64 {
 
 func (g Geometry) half() int { return max(1, int(math.Floor(g.KCut*2*g.BandMM*(1+1e-9)))) }
 
-// Condition returns the spokes of the given delays, and warnings.
+// Condition returns the spokes of the given delays.
 //
 // Errors: those of Measure; bad-setting when the geometry asks for nothing.
-func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry, delays []int) (*Spokes, []string, error) {
+func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry, delays []int) (*Spokes, error) {
 	if err := checkUsable(a, s); err != nil {
-		return nil, nil, err
+		return nil, err
 	}
 	if !(g.BandMM > 0) || !(g.KCut > 0) {
-		return nil, nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
+		return nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
 	}
 	sp := newSpokes(a, g, delays)
 	for _, d := range delays {
@@ -69,10 +68,10 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 	reader := newReader(a, s, c, sp)
 	for i := range sp.Shot {
 		if err := reader.fill(i); err != nil {
-			return nil, nil, err
+			return nil, err
 		}
 	}
-	return sp, sp.warnings(a), nil
+	return sp, nil
 }
 
 func newSpokes(a *acquisition.Acquisition, g Geometry, delays []int) *Spokes {
@@ -104,18 +103,6 @@ func noiseDensity(a *acquisition.Acquisition, c *Constants, d int) float64 {
 func (sp *Spokes) Row(shot, m int) []complex64 {
 	at := (shot*(sp.Half+1) + m) * len(sp.Delays)
 	return sp.Samples[at : at+len(sp.Delays) : at+len(sp.Delays)]
-}
-
-func (sp *Spokes) warnings(a *acquisition.Acquisition) []string {
-	least := sp.Half + 1
-	for _, m := range sp.OneSided {
-		least = min(least, m)
-	}
-	if a.Domain == acquisition.Time && least <= sp.Half {
-		k := float64(least-1) * sp.DeltaK
-		return []string{fmt.Sprintf("only one half of the echo reaches beyond k = %.3g cycles/mm; the other half is taken as its mirror (Hermitian symmetry)", math.Max(k, 0))}
-	}
-	return nil
 }
 
 // reader fills spokes from traces or projections. Shots of equal gradient strength share one resampler.

@@ -3,7 +3,6 @@ package session
 import (
 	"fmt"
 	"math"
-	"time"
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/backproject"
@@ -42,17 +41,14 @@ func kCut(a *acquisition.Acquisition, r recipe.Recipe) (cut, matrixLimit float64
 
 // Images is the result of the reconstruct stage for some delays.
 type Images struct {
-	Values   []float32 // [delay][voxel]
-	NoiseSD  []float64 // [delay] predicted SD of a voxel
-	Warnings []string
-	Seconds  float64
+	Values  []float32 // [delay][voxel]
+	NoiseSD []float64 // [delay] predicted SD of a voxel
 }
 
 // Reconstruct returns the images of some delays. Progress, which may be nil, is told the fraction done.
 //
 // Errors: those of condition.Condition, sampling.AxisWeights and volume.Cube.
 func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Constants, delays []int, progress func(float64)) (*Images, error) {
-	start := time.Now()
 	g, err := volume.Cube(a.Dim, r.Reconstruction.Matrix, r.Reconstruction.FieldOfViewMM)
 	if err != nil {
 		return nil, err
@@ -64,7 +60,7 @@ func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Const
 	}
 	cut, _ := kCut(a, r)
 	geometry := condition.Plan(a, c, r.Reconstruction.FieldOfViewMM, cut)
-	sp, warnings, err := condition.Condition(a, conditioning(r), c, geometry, delays)
+	sp, err := condition.Condition(a, conditioning(r), c, geometry, delays)
 	if err != nil {
 		return nil, err
 	}
@@ -77,7 +73,7 @@ func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Const
 		return nil, err
 	}
 	values := kernels[r.Reconstruction.Method](sp, g, axis, filter, progress)
-	return &Images{Values: values, NoiseSD: sp.NoiseSD(axis, filter), Warnings: warnings, Seconds: time.Since(start).Seconds()}, nil
+	return &Images{Values: values, NoiseSD: sp.NoiseSD(axis, filter)}, nil
 }
 
 func spokeFilter(sp *condition.Spokes, r recipe.Recipe, cut float64) ([]float64, error) {

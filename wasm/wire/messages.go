@@ -12,6 +12,7 @@ import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
 	"torrloom/recon/recipe"
+	"torrloom/recon/session"
 )
 
 // Version changes whenever a message changes its shape or meaning. Page and engine refuse to talk across versions.
@@ -109,28 +110,8 @@ type PlanRequest struct {
 	Workers int    `json:"workers"`
 }
 
-// Plan answers PlanRequest. Keys name the results of the stages: two plans with the same key share that stage's
-// result. ReconstructJobs and FitJobs are how to split the work.
-type Plan struct {
-	Recipe          recipe.Recipe `json:"recipe"` // complete, every default filled in
-	Keys            Keys          `json:"keys"`
-	N               [3]int        `json:"n"`
-	VoxelMM         [3]float64    `json:"voxelMM"`
-	OriginMM        [3]float64    `json:"originMM"` // centre of voxel (0,0,0)
-	MemoryBytes     int64         `json:"memoryBytes"`
-	ReconstructJobs [][]int       `json:"reconstructJobs"` // delay indices of each job
-	FitJobs         [][2]int      `json:"fitJobs"`         // voxel range [from, to) of each job
-	Reference       int           `json:"referenceDelay"`
-	Warnings        []string      `json:"warnings"`
-}
-
-// Keys are hashes of the data and of all settings that reach a stage.
-type Keys struct {
-	Measure     string `json:"measure"`
-	Reconstruct string `json:"reconstruct"`
-	Fit         string `json:"fit"`
-	Derive      string `json:"derive"`
-}
+// Plan answers PlanRequest.
+type Plan = session.Plan
 
 // MeasureRequest asks for what conditioning needs to know about the whole acquisition before it can be split.
 type MeasureRequest struct {
@@ -170,49 +151,14 @@ type Fitted struct {
 }
 
 // DeriveRequest asks for mask, pO2 and numbers. Buffers: the reference-delay image, rate, rateSE (float32), status
-// (uint8), over all voxels. The reply has the buffers fate (uint8, see Fates), pO2 and pO2SE (float32; empty without a
+// (uint8), over all voxels. The reply has the buffers fate (uint8, see session.Fates), pO2 and pO2SE (float32; empty without a
 // calibration).
 type DeriveRequest struct {
 	Recipe recipe.Recipe `json:"recipe"`
 }
 
 // Derived answers DeriveRequest.
-type Derived struct {
-	MaskLevel float64     `json:"maskLevel"` // amplitude at the threshold
-	Fates     []FateCount `json:"fates"`
-	Rate      Summary     `json:"rate"`
-	PO2       *Summary    `json:"pO2"` // null without a calibration
-	Negative  int         `json:"negative"`
-	Warnings  []string    `json:"warnings"`
-}
-
-// FateCount counts the voxels that share a fate: index into the fate buffer's values.
-type FateCount struct {
-	Value int    `json:"value"`
-	Label string `json:"label"` // "in the map", "below the mask level", ...
-	Count int    `json:"count"`
-}
-
-// Summary describes the answered voxels of one map.
-type Summary struct {
-	Unit      string     `json:"unit"`
-	Count     int        `json:"count"`
-	Mean      float64    `json:"mean"`
-	SD        float64    `json:"sd"`
-	Median    float64    `json:"median"`
-	Quartiles [2]float64 `json:"quartiles"`
-	Range     [2]float64 `json:"range"`
-	MedianSE  float64    `json:"medianSE"`  // median of the voxels' standard errors
-	Fractions []Fraction `json:"fractions"` // pO2 only
-	Edges     []float64  `json:"edges"`     // histogram bin edges
-	Counts    []int      `json:"counts"`
-}
-
-// Fraction is the share of answered voxels at or below a threshold.
-type Fraction struct {
-	Threshold float64 `json:"threshold"`
-	Share     float64 `json:"share"`
-}
+type Derived = session.Numbers
 
 // ExportRequest asks for one map as a file. The buffer holds its values; the reply has one buffer, the file's bytes.
 type ExportRequest struct {
