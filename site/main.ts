@@ -1,9 +1,47 @@
-// Placeholder of the page: starts the engine and shows what it says.
-import { startEngine } from "./engine/pool";
+// Entry of the page. For tests, and for whoever looks at it with the browser's tools, it keeps these marks:
+//
+//   body[data-state]                          starting, ready (an acquisition is open) or failed (no engine)
+//   [data-strand="0"] [data-stage][data-state] stages plan, measure, reconstruct, fit, derive of a variant, each
+//                                             waiting, working, done or failed
+//   [data-strand="0"] [data-map]              figures amplitude, rate, pO2; data-older when older than the settings;
+//                                             canvas[data-drawn] once there is something to see
+//   [data-value], [data-clipped]              value of a map at the cursor, share of its slice beyond the window
+//   [data-number]                             median, quartiles, mean, medianSE, fraction-2.5, ..., voxels, negative,
+//                                             seconds
+//   [data-fate]                               legend entry of one fate, by its value
+//   [data-fact]                               name, sequence, delays, shots, ... of the acquisition
+//   [data-setting]                            input of a setting by its path; "calibration" is the switch
+//   [data-action]                             buttons undo, redo, reset of a variant
+//   [data-fault]                              text of a fault: open, save, start, recipe, or the path of a setting
+//   [data-made-up], [data-no-calibration], [data-opening], [data-warnings], [data-build]
+//   #open-files-input, #load-recipe-input     file inputs; #use-demo, #save-recipe, #save-maps, #save-pO2, #save-rate,
+//                                             #save-amplitude, #save-mask, #save-all; #theme
+//   #readout, #slice, #delay, #shot, input[name=plane], #window-pO2-low, ...  shared view
+
+import { effect } from "@preact/signals";
+import { h, render } from "preact";
+import { Page } from "./page";
+import { acquisition, openDemo } from "./store/acquisition";
+import { followTheme } from "./store/appearance";
+import { start, startFault } from "./store/engine";
+import { followTraces } from "./store/traces";
 import "./style.css";
 
-const page = document.getElementById("page")!;
-startEngine().then(
-  (engine) => (page.textContent = JSON.stringify(engine.hello)),
-  (error: Error) => (page.textContent = error.message),
-);
+function followState(): void {
+  effect(() => {
+    document.body.dataset.state = startFault.value ? "failed" : acquisition.value ? "ready" : "starting";
+  });
+}
+
+async function begin(): Promise<void> {
+  followTheme();
+  followState();
+  const place = document.getElementById("page")!;
+  place.replaceChildren();
+  render(h(Page, null), place);
+  if (!(await start())) return;
+  followTraces();
+  await openDemo();
+}
+
+void begin();

@@ -1,0 +1,65 @@
+// The facts of an acquisition in words.
+
+import { bytes, count, plain, significant } from "../../draw/number";
+import type { Opened } from "../../wire.gen";
+
+export interface Fact {
+  key: string;
+  label: string;
+  text: string;
+}
+
+const sequences: Record<string, string> = {
+  "inversion-recovery": "inversion recovery",
+  "saturation-recovery": "saturation recovery",
+  "echo-decay": "echo decay",
+  "free-decay": "free decay",
+};
+
+/** Returns the facts in reading order: what was measured, what it allows, what was noted beside it. */
+export function factsOf(opened: Opened): Fact[] {
+  return [...measuredFacts(opened), ...limitFacts(opened), ...notedFacts(opened)];
+}
+
+export { bytes as sizeOf };
+
+function measuredFacts(o: Opened): Fact[] {
+  const sampled = `${o.samples}${o.dwellNS > 0 ? ` every ${plain(o.dwellNS, 4)} ns` : " positions"}`;
+  return [
+    { key: "sequence", label: "sequence", text: `${sequences[o.sequence] ?? o.sequence}, gives ${o.rateName}` },
+    { key: "dim", label: "image", text: `${o.dim}D, ${o.encoding === "spoke" ? "spokes" : "single points"}` },
+    { key: "delays", label: "delays", text: `${o.delays}, ${rangeOf(o.delayUS)} µs` },
+    { key: "shots", label: "shots", text: `${count(o.shots)}, of which ${count(o.imageShots)} for the image` },
+    { key: "samples", label: "samples", text: sampled },
+    { key: "timeZero", label: "time zero", text: `sample ${plain(o.timeZeroSample, 5)}` },
+    { key: "gradient", label: "gradient", text: `${rangeOf([o.gradientMinMTPerM, o.gradientMaxMTPerM])} mT/m` },
+  ];
+}
+
+function limitFacts(o: Opened): Fact[] {
+  return [
+    { key: "kMax", label: "k max", text: `${significant(o.kMaxPerMM)} /mm` },
+    { key: "resolution", label: "resolution 1/(2 k max)", text: `${significant(o.resolutionMM)} mm` },
+    { key: "aliasFree", label: "alias-free field of view", text: `${significant(o.aliasFreeMM)} mm` },
+    { key: "extent", label: "measured extent", text: `${significant(o.extentMM)} mm across` },
+    { key: "signalToNoise", label: "signal to noise", text: significant(o.signalToNoise, 2) },
+  ];
+}
+
+function notedFacts({ optional }: Opened): Fact[] {
+  const facts: Fact[] = [];
+  const add = (key: string, label: string, value: number | string | undefined, unit = "") => {
+    if (value === undefined || value === "") return;
+    facts.push({ key, label, text: typeof value === "number" ? `${plain(value, 6)}${unit}` : value });
+  };
+  add("temperature", "temperature", optional.temperature_C, " °C");
+  add("probe", "probe", optional.probe);
+  add("carrier", "carrier", optional.carrier_MHz, " MHz");
+  add("note", "note", optional.note);
+  return facts;
+}
+
+function rangeOf(values: number[]): string {
+  const [low, high] = [Math.min(...values), Math.max(...values)];
+  return low === high ? plain(low, 4) : `${plain(low, 4)} to ${plain(high, 4)}`;
+}

@@ -1,0 +1,141 @@
+// The scale of a map: colours, ticks, unit, the window as numbers to change, and the share of the slice beyond it.
+
+import { useEffect, useRef, useState } from "preact/hooks";
+import { tableFor, tableSize, type Quantity } from "../../draw/colour";
+import { percent, plain, unitText } from "../../draw/number";
+import type { Painted } from "../../draw/slice";
+import { ticksOf, type Window } from "../../draw/window";
+import { oneWindowForDelays, setWindows, windowOf } from "../../store/view";
+import { amplitudeUnit } from "../view/readout";
+
+interface Props {
+  quantity: Quantity;
+  title: string;
+  tally: Painted | null;
+}
+
+export function ColourBar({ quantity, title, tally }: Props) {
+  const window = windowOf(quantity);
+  return (
+    <div class="bar">
+      <Colours quantity={quantity} />
+      <Ticks window={window} />
+      <p class="bar-title">
+        {title} in {unitOf(quantity)}
+      </p>
+      <WindowInputs quantity={quantity} title={title} window={window} />
+      <p class="clipped" data-clipped={quantity}>
+        {tally ? clippedWords(tally) : ""}
+      </p>
+      {quantity === "amplitude" && <DelaySwitch />}
+    </div>
+  );
+}
+
+function unitOf(quantity: Quantity): string {
+  if (quantity === "amplitude") return `signal ${amplitudeUnit()}`;
+  return quantity === "rate" ? unitText("1/us") : "torr";
+}
+
+function Colours({ quantity }: { quantity: Quantity }) {
+  const strip = useRef<HTMLCanvasElement>(null);
+  useEffect(() => {
+    const pixels = new ImageData(tableSize, 1);
+    new Uint32Array(pixels.data.buffer).set(tableFor(quantity));
+    strip.current!.getContext("2d")!.putImageData(pixels, 0, 0);
+  }, [quantity]);
+  return <canvas class="bar-colours" ref={strip} width={tableSize} height={1} aria-hidden="true" />;
+}
+
+function Ticks({ window }: { window: Window }) {
+  const place = (value: number) => (100 * (value - window.low)) / (window.high - window.low || 1);
+  return (
+    <div class="ticks" aria-hidden="true">
+      {ticksOf(window, 5).map((value) => (
+        <span key={value} style={{ left: `${place(value)}%` }}>
+          {plain(value, 4)}
+        </span>
+      ))}
+    </div>
+  );
+}
+
+function WindowInputs({ quantity, title, window }: { quantity: Quantity; title: string; window: Window }) {
+  const automatic = setWindows[quantity].value === null;
+  const [wrong, setWrong] = useState(false);
+  const enter = (end: "low" | "high", text: string) => {
+    const next = { ...window, [end]: Number(text) };
+    const fits = text.trim() !== "" && next.low < next.high;
+    setWrong(!fits);
+    if (fits) setWindows[quantity].value = next;
+  };
+  const reset = () => {
+    setWrong(false);
+    setWindows[quantity].value = null;
+  };
+  return (
+    <div class="window" role="group" aria-label={`window of the ${title} map`}>
+      <WindowEnd
+        name={`${title} window from`}
+        id={`window-${quantity}-low`}
+        value={window.low}
+        enter={(text) => enter("low", text)}
+      />
+      <span>to</span>
+      <WindowEnd
+        name={`${title} window to`}
+        id={`window-${quantity}-high`}
+        value={window.high}
+        enter={(text) => enter("high", text)}
+      />
+      <button type="button" disabled={automatic && !wrong} onClick={reset} aria-label={`automatic window for ${title}`}>
+        auto
+      </button>
+      {wrong && <p class="fault">from must be below to</p>}
+    </div>
+  );
+}
+
+interface EndProps {
+  name: string;
+  id: string;
+  value: number;
+  enter: (text: string) => void;
+}
+
+function WindowEnd({ name, id, value, enter }: EndProps) {
+  return (
+    <input
+      id={id}
+      type="number"
+      step="any"
+      aria-label={name}
+      value={Number(value.toPrecision(5))}
+      onChange={(event) => enter(event.currentTarget.value)}
+    />
+  );
+}
+
+function DelaySwitch() {
+  return (
+    <label class="switch">
+      <input
+        id="one-window"
+        type="checkbox"
+        checked={oneWindowForDelays.value}
+        onChange={(event) => (oneWindowForDelays.value = event.currentTarget.checked)}
+      />
+      one automatic window for all delays
+    </label>
+  );
+}
+
+function clippedWords({ coloured, clippedLow, clippedHigh }: Painted): string {
+  if (coloured === 0) return "no voxel with a value in this slice";
+  if (clippedLow + clippedHigh === 0) return "nothing in this slice is beyond the window";
+  const parts = [
+    clippedLow > 0 ? `${percent(clippedLow / coloured)} below` : "",
+    clippedHigh > 0 ? `${percent(clippedHigh / coloured)} above` : "",
+  ];
+  return `in this slice ${parts.filter(Boolean).join(", ")} the window`;
+}

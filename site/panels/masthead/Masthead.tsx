@@ -1,0 +1,154 @@
+// Name, and the actions on the whole page.
+
+import { useRef } from "preact/hooks";
+import { acquisition, openDemo, openFiles } from "../../store/acquisition";
+import { theme, type Theme } from "../../store/appearance";
+import { wordsOf } from "../../store/fault";
+import { opening, openFault } from "../../store/opening";
+import {
+  canSave,
+  loadRecipe,
+  mapNames,
+  saveFault,
+  saveMap,
+  saveMaps,
+  saveRecipe,
+  type MapName,
+} from "../../store/save";
+import { strands } from "../../store/strand";
+
+export function Masthead() {
+  return (
+    <header class="masthead">
+      <div class="name">
+        <h1>Torrloom</h1>
+        <p>pO₂ maps from the raw measurements of a pulse EPR oxygen imager, computed on this machine</p>
+        {acquisition.value?.madeUp && (
+          <strong class="tag" data-made-up>
+            Made-up data
+          </strong>
+        )}
+      </div>
+      <Actions />
+      <Faults />
+    </header>
+  );
+}
+
+function Actions() {
+  const strand = strands.value[0];
+  return (
+    <div class="actions" role="group" aria-label="Files and settings of the page">
+      <FileButton id="open-files" label="Open files" multiple take={openFiles} />
+      <button id="use-demo" onClick={() => void openDemo()}>
+        Use demo
+      </button>
+      <SaveMaps />
+      <button id="save-recipe" disabled={!strand} onClick={() => saveRecipe(strand)}>
+        Save recipe
+      </button>
+      <FileButton
+        id="load-recipe"
+        label="Load recipe"
+        accept=".json,application/json"
+        disabled={!strand}
+        take={([file]) => void loadRecipe(strand, file)}
+      />
+      <label class="theme">
+        <span class="unseen">Theme</span>
+        <select id="theme" value={theme.value} onChange={(e) => (theme.value = e.currentTarget.value as Theme)}>
+          <option value="system">as the system</option>
+          <option value="light">light</option>
+          <option value="dark">dark</option>
+        </select>
+      </label>
+    </div>
+  );
+}
+
+interface FileButtonProps {
+  id: string;
+  label: string;
+  multiple?: boolean;
+  accept?: string;
+  disabled?: boolean;
+  take: (files: File[]) => void;
+}
+
+function FileButton({ id, label, take, disabled, ...input }: FileButtonProps) {
+  const picker = useRef<HTMLInputElement>(null);
+  const picked = ({ currentTarget }: { currentTarget: HTMLInputElement }) => {
+    const files = [...(currentTarget.files ?? [])];
+    currentTarget.value = "";
+    if (files.length > 0) take(files);
+  };
+  return (
+    <>
+      <button id={id} disabled={disabled} onClick={() => picker.current!.click()}>
+        {label}
+      </button>
+      <input {...input} id={`${id}-input`} type="file" ref={picker} hidden aria-label={label} onChange={picked} />
+    </>
+  );
+}
+
+const wordsFor: Record<MapName, string> = {
+  pO2: "pO₂ map",
+  rate: "rate map",
+  amplitude: "amplitude image at the shown delay",
+  mask: "mask",
+};
+
+function SaveMaps() {
+  const menu = useRef<HTMLDetailsElement>(null);
+  const strand = strands.value[0];
+  const close = (event: KeyboardEvent) => {
+    if (event.key !== "Escape") return;
+    menu.current!.open = false;
+    menu.current!.querySelector("summary")!.focus();
+  };
+  return (
+    <details class="menu" ref={menu} onKeyDown={close}>
+      <summary id="save-maps">Save maps</summary>
+      <div class="menu-body">
+        <p>NIfTI-1, compressed, in mm</p>
+        {mapNames.map((map) => (
+          <button
+            id={`save-${map}`}
+            key={map}
+            disabled={!strand || !canSave(strand, map)}
+            onClick={() => void saveMap(strand, map)}
+          >
+            {wordsFor[map]}
+          </button>
+        ))}
+        <button id="save-all" disabled={!strand} onClick={() => void saveMaps(strand)}>
+          all of them
+        </button>
+      </div>
+    </details>
+  );
+}
+
+function Faults() {
+  return (
+    <div class="notices" role="status">
+      {opening.value && (
+        <p class="notice" data-opening>
+          Opening {opening.value} …
+        </p>
+      )}
+      {openFault.value && (
+        <p class="notice fault" data-fault="open">
+          {wordsOf(openFault.value)} {acquisition.value && <span>The acquisition that was open stays open.</span>}{" "}
+          <button onClick={() => (openFault.value = null)}>Dismiss</button>
+        </p>
+      )}
+      {saveFault.value && (
+        <p class="notice fault" data-fault="save">
+          {wordsOf(saveFault.value)} <button onClick={() => (saveFault.value = null)}>Dismiss</button>
+        </p>
+      )}
+    </div>
+  );
+}

@@ -1,0 +1,104 @@
+// A strand is one variant: a recipe applied to the open acquisition, with the state of its stages and what is shown
+// of its results. Strands stack; everything about one of them is in its own object.
+
+import { computed, signal, type ReadonlySignal, type Signal } from "@preact/signals";
+import type { Grid } from "../draw/grid";
+import type { Fault, Plan, Recipe, Requests } from "../wire.gen";
+import { History } from "./history";
+
+export const stageNames = ["plan", "measure", "reconstruct", "fit", "derive"] as const;
+
+export type StageName = (typeof stageNames)[number];
+
+export type StageState =
+  | { state: "waiting" }
+  | { state: "working"; fraction: number }
+  | { state: "done"; seconds: number; reused: boolean }
+  | { state: "failed"; fault: Fault };
+
+/** The images of the delays. Each array holds one value per voxel, x-fastest. */
+export interface Images {
+  key: string;
+  grid: Grid;
+  delays: Float32Array[];
+  noiseSD: number[];
+}
+
+export interface Rates {
+  key: string;
+  grid: Grid;
+  rate: Float32Array<ArrayBuffer>;
+  rateSE: Float32Array<ArrayBuffer>;
+  amplitude: Float32Array<ArrayBuffer>;
+  chiSquare: Float32Array<ArrayBuffer>;
+  status: Uint8Array<ArrayBuffer>;
+}
+
+/** Fates and pO2 of the voxels; pO2 and its error are null without a calibration. */
+export interface Oxygen {
+  key: string;
+  grid: Grid;
+  fate: Uint8Array;
+  pO2: Float32Array<ArrayBuffer> | null;
+  pO2SE: Float32Array | null;
+  derived: Derived;
+}
+
+/** The numbers of a derived map. */
+export type Derived = Requests["derive"]["reply"];
+
+export interface Strand {
+  id: number;
+  name: string;
+  defaults: Recipe;
+  recipe: Signal<Recipe>;
+  history: History<Recipe>;
+  stages: Record<StageName, Signal<StageState>>;
+  /** The last plan that held, of the recipe whose text is planned. */
+  plan: Signal<Plan | null>;
+  plannedText: Signal<string>;
+  images: Signal<Images | null>;
+  rates: Signal<Rates | null>;
+  oxygen: Signal<Oxygen | null>;
+  warnings: Signal<string[]>;
+  /** What the plan said against the recipe as it stands; null when it holds. */
+  recipeFault: ReadonlySignal<Fault | null>;
+  /** Counts the runs, so that an older one knows that it has been overtaken. */
+  run: number;
+}
+
+export const strands = signal<Strand[]>([]);
+
+export function makeStrand(id: number, defaults: Recipe): Strand {
+  const stages = Object.fromEntries(stageNames.map((name) => [name, signal<StageState>({ state: "waiting" })]));
+  const strand: Omit<Strand, "recipeFault"> = {
+    id,
+    name: `Variant ${String.fromCharCode("A".charCodeAt(0) + (id % 26))}`,
+    defaults,
+    recipe: signal(defaults),
+    history: new History<Recipe>(),
+    stages: stages as Strand["stages"],
+    plan: signal(null),
+    plannedText: signal(""),
+    images: signal(null),
+    rates: signal(null),
+    oxygen: signal(null),
+    warnings: signal([]),
+    run: 0,
+  };
+  const { plan } = strand.stages;
+  return { ...strand, recipeFault: computed(() => (plan.value.state === "failed" ? plan.value.fault : null)) };
+}
+
+/** Tells whether what a stage shows was made with other settings than those that stand now. */
+export function isOlder(strand: Strand, stage: "reconstruct" | "fit" | "derive"): boolean {
+  const shown = { reconstruct: strand.images, fit: strand.rates, derive: strand.oxygen }[stage].value;
+  if (!shown) return false;
+  const current = strand.plannedText.value === textOf(strand.recipe.value);
+  return !current || strand.plan.value?.keys[stage] !== shown.key;
+}
+
+/** Returns the recipe as JSON text, the form in which it is checked. */
+export function textOf(recipe: Recipe): string {
+  return JSON.stringify(recipe);
+}
