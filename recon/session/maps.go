@@ -1,6 +1,8 @@
 package session
 
 import (
+	"math"
+
 	"torrloom/recon/acquisition"
 	"torrloom/recon/volume"
 )
@@ -25,6 +27,17 @@ func InMask(fate []uint8) []bool {
 	out := make([]bool, len(fate))
 	for i, f := range fate {
 		out[i] = Fate(f) != OutsideView && Fate(f) != BelowMask
+	}
+	return out
+}
+
+// InMap returns a copy of values with NaN wherever the voxel has no answer in the map.
+func InMap(fate []uint8, values []float32) []float32 {
+	out := make([]float32, len(values))
+	for i, v := range values {
+		if out[i] = float32(math.NaN()); Fate(fate[i]) == Answered || Fate(fate[i]) == Negative {
+			out[i] = v
+		}
 	}
 	return out
 }
