@@ -146,6 +146,7 @@ def malformed():
                              "without escapes", "No type string needs an escape."),
         "no-byte-order.npy": (by_hand(head % ("|f8", "(1,)"), bytes(8)), "bad-file", "no byte order",
                               "A float of eight bytes has an order, and it is not stated."),
+        "signed-size.npy": (by_hand(head % ("<f+8", "(1,)"), bytes(8)), "bad-file", "no size", "A size with a sign."),
         "text-of-no-length.npy": (by_hand(head % ("<U0", "(268435456,)")), "bad-file", "no size",
                                   "Two hundred and sixty-eight million empty texts from 80 bytes."),
         "objects.npy": (by_hand(head % ("|O", "(1,)"), b"\x80\x04N."), "unsupported", "Python objects",

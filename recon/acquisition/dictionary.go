@@ -350,9 +350,6 @@ func readGradient(a *Acquisition, array Array) error {
 	for s := range a.GradientMTPerM {
 		copy(a.GradientMTPerM[s][:axes], values[s*axes:])
 	}
-	if axes == 2 {
-		a.Dim = 2
-	}
 	return nil
 }
 

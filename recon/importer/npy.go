@@ -6,7 +6,6 @@ import (
 	"path"
 	"strconv"
 	"strings"
-	"unicode/utf8"
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
@@ -144,9 +143,6 @@ type npyText struct {
 func parseHeader(text string) (npyText, error) {
 	var h npyText
 	s := scanner{text: text}
-	if !utf8.ValidString(text) {
-		s.fail("text that is valid UTF-8")
-	}
 	seen := map[string]bool{}
 	s.expect('{')
 	for s.fault == nil && !s.accept('}') {
