@@ -46,7 +46,9 @@ func NewFitter(m Model, delayUS, noiseSD []float64, s Settings) (*Fitter, error)
 	if err := f.setRange(s); err != nil {
 		return nil, err
 	}
-	f.tabulate()
+	if err := f.tabulate(); err != nil {
+		return nil, err
+	}
 	return f, nil
 }
 
@@ -91,17 +93,17 @@ func (f *Fitter) ResidualScale(chiSquare float64) float64 {
 
 // Fit returns the fit of one voxel: the best node of the table, refined as by FitFrom. y has one value per delay.
 func (f *Fitter) Fit(y []float64) Answer {
-	z, status := f.whiten(y)
+	data, status := f.whiten(y)
 	if status != Answered {
 		return unanswered(status)
 	}
-	return f.climb(z, f.nodeX(f.bestNode(z)))
+	return f.climb(data, f.nodeX(f.bestNode(data.z)))
 }
 
 // FitFrom returns the fit reached uphill from a start rate (in 1/µs), which is the local best nearest to it in that
 // direction. A start outside the range is moved to its nearer end.
 func (f *Fitter) FitFrom(y []float64, startRate float64) Answer {
-	z, status := f.whiten(y)
+	data, status := f.whiten(y)
 	if status != Answered {
 		return unanswered(status)
 	}
@@ -109,23 +111,32 @@ func (f *Fitter) FitFrom(y []float64, startRate float64) Answer {
 	if !(x >= f.lnMin) {
 		x = f.lnMin
 	}
-	return f.climb(z, math.Min(x, f.lnMax))
+	return f.climb(data, math.Min(x, f.lnMax))
+}
+
+// whitened is a voxel divided by the noise. Its part along the constant is taken out of z, because a small recovery on
+// a large constant would lose its digits to it.
+type whitened struct {
+	z        []float64
+	onOffset float64
+	energy   float64 // of the whole
 }
 
 // flat is the part of the signal, as a fraction of its energy, below which a change along the delays is rounding.
 // Float64 sums of some hundred delays lose 1e-14 in length, 1e-28 in energy.
 const flat = 1e-24
 
-// whiten returns y divided by the noise, and NoSignal when there is nothing to fit.
-func (f *Fitter) whiten(y []float64) ([]float64, Status) {
+// whiten returns the data to fit, and NoSignal when there are none.
+func (f *Fitter) whiten(y []float64) (whitened, Status) {
 	z := make([]float64, len(f.delayUS))
 	for d := range z {
 		z[d] = y[d] * f.rootWeight[d]
 	}
-	if !hasSignal(dot(z, z)) {
-		return nil, NoSignal
+	energy := dot(z, z)
+	if !hasSignal(energy) {
+		return whitened{}, NoSignal
 	}
-	return z, Answered
+	return whitened{z: z, onOffset: f.takeOffset(z), energy: energy}, Answered
 }
 
 func hasSignal(energy float64) bool { return energy > 0 && !math.IsInf(energy, 1) }
@@ -133,9 +144,10 @@ func hasSignal(energy float64) bool { return energy > 0 && !math.IsInf(energy, 1
 // nodeX returns ln R of node k. The last one may not exceed the range by rounding.
 func (f *Fitter) nodeX(k int) float64 { return math.Min(f.lnMin+float64(k)*f.lnStep, f.lnMax) }
 
+// bestNode returns the seed with the greatest f².
 func (f *Fitter) bestNode(z []float64) int {
 	fr, best, most := newFrame(len(z)), 0, -1.0
-	for k := range f.table.nodes {
+	for k := 0; k < f.table.nodes; k += 2 {
 		f.frameAt(f.nodeX(k), fr)
 		if along := dot(fr.u, z); along*along > most {
 			best, most = k, along*along
@@ -145,20 +157,20 @@ func (f *Fitter) bestNode(z []float64) int {
 }
 
 // climb walks uphill from x until the best fit is bracketed, then closes in on it.
-func (f *Fitter) climb(z []float64, x float64) Answer {
-	fr := newFrame(len(z))
-	lo, hi, status := f.bracket(z, x, fr)
+func (f *Fitter) climb(data whitened, x float64) Answer {
+	fr := newFrame(len(data.z))
+	lo, hi, status := f.bracket(data.z, x, fr)
 	if status == Answered {
-		x = f.closeIn(z, lo, hi, fr)
+		x = f.closeIn(data.z, lo, hi, fr)
 	}
 	f.frameAt(x, fr)
-	if along := dot(fr.u, z); !(along*along > flat*dot(z, z)) {
+	if along := dot(fr.u, data.z); !(along*along > flat*data.energy) {
 		return unanswered(NoSignal)
 	}
 	if status != Answered {
 		return unanswered(status)
 	}
-	return f.answerAt(z, x, fr)
+	return f.answerAt(data, x, fr)
 }
 
 // uphill returns half the derivative of f² with respect to ln R at the frame.
@@ -217,25 +229,20 @@ func (f *Fitter) closeIn(z []float64, lo, hi float64, fr *frame) float64 {
 }
 
 // answerAt reads the answer off the frame at the best x.
-func (f *Fitter) answerAt(z []float64, x float64, fr *frame) Answer {
-	along := dot(fr.u, z)
-	a := Answer{Rate: math.Exp(x), Amplitude: along * fr.perF, Inverted: math.NaN(), Status: Answered}
-	onOffset := 0.0
-	if f.offset != nil {
-		onOffset = dot(f.offset, z)
-		a.Amplitude += onOffset * f.offsetUnit
-		a.Inverted = along * fr.inverted
-	}
+func (f *Fitter) answerAt(data whitened, x float64, fr *frame) Answer {
+	along := dot(fr.u, data.z)
+	a := Answer{Rate: math.Exp(x), Inverted: math.NaN(), Status: Answered}
+	a.Amplitude = data.onOffset*f.offsetUnit + along*fr.perF
 	if !(along > 0 && a.Amplitude > 0) {
 		return unanswered(WrongSign)
 	}
+	if f.offset != nil {
+		a.Inverted = along / fr.norm
+	}
 	a.RateSE = a.Rate / (along * fr.sensitivity)
 	a.AmplitudeSE = fr.amplitudeSE
-	for d := range z {
-		left := z[d] - along*fr.u[d]
-		if f.offset != nil {
-			left -= onOffset * f.offset[d]
-		}
+	for d, z := range data.z {
+		left := z - along*fr.u[d]
 		a.ChiSquare += left * left
 	}
 	return a

@@ -13,31 +13,31 @@ import "math"
 // other: the Fisher matrix is diagonal, and the Cramér-Rao bound of x is 1/(|f| |du|).
 type frame struct {
 	u, du, d2u  []float64
+	norm        float64 // |ĉ|
 	sensitivity float64 // |du|
 
 	// A = offset coefficient · offsetUnit + f · perF, and AmplitudeSE depends on the rate alone.
 	perF, amplitudeSE float64
-	inverted          float64 // B = f · inverted
 }
 
 func newFrame(delays int) *frame {
 	return &frame{u: make([]float64, delays), du: make([]float64, delays), d2u: make([]float64, delays)}
 }
 
-// leastNorm keeps the curve away from the subnormal numbers, where it loses its digits.
-const leastNorm = 1e-290
+// leastNorm keeps the square of the norm away from the subnormal numbers, where it loses its digits.
+const leastNorm = 1e-140
 
 // frameAt fills fr for x = ln R. It returns false when the curve has vanished from every delay.
 func (f *Fitter) frameAt(x float64, fr *frame) bool {
 	f.curveAt(math.Exp(x), fr)
 	along, alongFirst := f.takeOffset(fr.u), f.takeOffset(fr.du)
 	f.takeOffset(fr.d2u)
-	norm := math.Sqrt(dot(fr.u, fr.u))
-	if !(norm > leastNorm) {
+	fr.norm = math.Sqrt(dot(fr.u, fr.u))
+	if !(fr.norm > leastNorm) {
 		return false
 	}
-	growth := fr.turn(norm)
-	f.amplitudeTerms(fr, norm, growth, along, alongFirst)
+	growth := fr.turn()
+	f.amplitudeTerms(fr, growth, along, alongFirst)
 	return true
 }
 
@@ -62,12 +62,12 @@ func (f *Fitter) takeOffset(v []float64) float64 {
 	return part + remove(v, f.offset)
 }
 
-// turn makes u a unit vector and du, d2u its derivatives, from the curve of length norm and its derivatives. It returns
-// the relative growth of the length, |ĉ|'/|ĉ|.
-func (fr *frame) turn(norm float64) float64 {
-	scale(fr.u, 1/norm)
-	scale(fr.du, 1/norm)
-	scale(fr.d2u, 1/norm)
+// turn makes u a unit vector and du, d2u its derivatives, from the curve ĉ and its derivatives. It returns the relative
+// growth of the length, |ĉ|'/|ĉ|.
+func (fr *frame) turn() float64 {
+	scale(fr.u, 1/fr.norm)
+	scale(fr.du, 1/fr.norm)
+	scale(fr.d2u, 1/fr.norm)
 	growth := remove(fr.du, fr.u)
 	growth += remove(fr.du, fr.u)
 	remove(fr.d2u, fr.u)
@@ -81,14 +81,13 @@ func (fr *frame) turn(norm float64) float64 {
 
 // amplitudeTerms finds how A and B follow from the coordinates, and the Cramér-Rao bound of A by the same map: with
 // A = f·h(x) the bound is h² + (h'/|du|)², and an offset adds its own variance.
-func (f *Fitter) amplitudeTerms(fr *frame, norm, growth, along, alongFirst float64) {
-	fr.inverted = 1 / norm
-	fr.perF = 1 / norm
-	slope := -growth / norm
+func (f *Fitter) amplitudeTerms(fr *frame, growth, along, alongFirst float64) {
+	fr.perF = 1 / fr.norm
+	slope := -growth / fr.norm
 	offsetVariance := 0.0
 	if f.offset != nil {
-		fr.perF = -along * f.offsetUnit / norm
-		slope = -(alongFirst/norm - along*growth/norm) * f.offsetUnit
+		fr.perF = -along * f.offsetUnit / fr.norm
+		slope = (along*growth - alongFirst) * f.offsetUnit / fr.norm
 		offsetVariance = f.offsetUnit * f.offsetUnit
 	}
 	tilt := slope / fr.sensitivity
