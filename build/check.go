@@ -24,6 +24,7 @@ var steps = []step{
 	{"vet", goCommand("vet", "./...")},
 	{"vet as wasm", asWasm(goCommand("vet", "./recon/...", "./wasm/..."))},
 	{"staticcheck", goCommand("tool", "staticcheck", "./...")},
+	{"staticcheck as wasm", asWasm(goCommand("tool", "staticcheck", "./wasm"))},
 	{"generated types", checkWireTypes},
 	{"TypeScript", checkTypeScript},
 	{"tests", goCommand("test", "./recon/...", "./wasm/...", "./build/...")},

@@ -3,10 +3,10 @@
 package main
 
 // crashKind is a request that no page makes: the tests ask for it through the console, to see that the page survives
-// every way in which an engine can die. It is not in wire.Exchanges, so TypeScript refuses it.
+// every way in which an engine can die or go astray. It is not in wire.Exchanges, so TypeScript refuses it.
 const crashKind = "crash-on-purpose"
 
-// crashOnPurpose dies in the way that body names, if kind asks for it.
+// crashOnPurpose dies in the way that body names, if kind asks for it. Only "grow" lives on, with 1.25 GiB in use.
 func crashOnPurpose(kind, body string) {
 	if kind != crashKind {
 		return
@@ -22,6 +22,9 @@ func crashOnPurpose(kind, body string) {
 		hoard()
 	case `"blocked"`:
 		<-make(chan int)
+	case `"grow"`:
+		grown = make([]byte, 5<<28)
+		return
 	case `"loop"`:
 		for {
 			spins++
@@ -30,7 +33,10 @@ func crashOnPurpose(kind, body string) {
 	panic("crash on purpose")
 }
 
-var spins int
+var (
+	spins int
+	grown []byte
+)
 
 func deeper(n int) int {
 	return deeper(n+1) + n

@@ -8,6 +8,9 @@ import (
 	"time"
 )
 
+// startLimit is how long a person waits without wondering.
+const startLimit = 1500 * time.Millisecond
+
 // openEngine opens the page and waits until its engine has said hello.
 func openEngine(t *testing.T) *page {
 	t.Helper()
@@ -21,7 +24,32 @@ func TestPageStartsAndTheEngineSaysHello(t *testing.T) {
 	if build := evaluate[string](p, "torrloomEngine.hello.build"); len(build) != 12 {
 		t.Errorf("the engine is stamped %q, wanted the 12 digits of its sources", build)
 	}
-	p.screenshot("start")
+	ready := evaluate[float64](p, `performance.getEntriesByName("engine-ready")[0].startTime`)
+	t.Logf("ready after %.0f ms", ready)
+	if !(ready < float64(startLimit.Milliseconds())) {
+		t.Errorf("the engine was ready after %.0f ms, wanted less than %v", ready, startLimit)
+	}
+	p.demandSilence()
+}
+
+// TestAnEngineThatHasGrownTooLargeIsReplaced asks for more than the limit of 1 GiB and looks at what is left of it.
+func TestAnEngineThatHasGrownTooLargeIsReplaced(t *testing.T) {
+	const grown = `torrloomEngine.slots[0].client.memoryBytes`
+	p := openEngine(t)
+	evaluate[string](p, requestText("demo", "{noise: false}"))
+	from := evaluate[float64](p, `(globalThis.firstClient = torrloomEngine.slots[0].client, `+grown+`)`)
+	said := evaluate[string](p, `torrloomEngine.request("crash-on-purpose", "grow", [], {worker: 0}).catch((e) =>
+		e.fault.kind + " " + (firstClient.memoryBytes > 2 ** 30))`)
+	if said != "bug true" {
+		t.Fatalf("the worker did not grow: %s", said)
+	}
+	if evaluate[bool](p, `torrloomEngine.slots[0].client === firstClient`) {
+		t.Error("the worker was kept")
+	}
+	demandAllWorkersHoldTheDemo(t, p)
+	if after := evaluate[float64](p, grown); !(after < 2*from) {
+		t.Errorf("the worker holds %g bytes after it was replaced, %g before it grew", after, from)
+	}
 	p.demandSilence()
 }
 

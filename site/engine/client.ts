@@ -108,7 +108,7 @@ export class Client {
     this.alive = false;
     this.worker.terminate();
     this.giveUp(error);
-    this.settle(0, ({ reject }) => reject(error));
+    this.settle(this.memoryBytes, ({ reject }) => reject(error));
   }
 }
 

@@ -270,6 +270,7 @@ export async function startEngine(): Promise<Engine> {
     const engine = await Engine.start(Math.max(1, Math.min(mostWorkers, cores)));
     // For the browser's console, and for the tests.
     Object.assign(globalThis, { torrloomEngine: engine });
+    performance.mark("engine-ready");
     return engine;
   } catch (error) {
     if (error instanceof EngineFault) throw error;
