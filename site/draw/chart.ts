@@ -2,6 +2,7 @@
 
 import * as Plot from "@observablehq/plot";
 import type { Summary, Traces } from "../wire.gen";
+import { plain } from "./number";
 import { tableFor, tableSize, type Quantity } from "./colour";
 import { ticksOf, type Window } from "./window";
 
@@ -10,7 +11,13 @@ export type ChartElement = SVGSVGElement | HTMLElement;
 const height = 116;
 const margins = { marginTop: 14, marginRight: 8, marginBottom: 28, marginLeft: 42 };
 const frame = { height, ...margins, style: { fontSize: "10.5px", background: "none", overflow: "visible" } };
-const axis = { tickSize: 3, tickPadding: 2, labelArrow: "none" as const, labelAnchor: "center" as const };
+const axis = {
+  tickSize: 3,
+  tickPadding: 2,
+  labelArrow: "none" as const,
+  labelAnchor: "center" as const,
+  tickFormat: (value: number) => plain(value),
+};
 
 function zeroLine() {
   return Plot.ruleY([0], { strokeOpacity: 0.35 });
@@ -59,33 +66,30 @@ export function delayChart({ delayUS, echoHeight }: Traces, shown: number, width
   });
 }
 
-/** Draws how many voxels have which value, each bar in the colour that the map gives it, with named marks. */
-export function histogramChart(
-  { edges, counts }: Summary,
-  how: { quantity: Quantity; window: Window; label: string; marks: number[]; width: number },
-): ChartElement {
+export interface HistogramLook {
+  quantity: Quantity;
+  window: Window;
+  label: string;
+  /** Thresholds; what lies at or below them is shaded and named. */
+  marks: number[];
+  width: number;
+}
+
+/** Draws how many voxels have which value, each bar in the colour that the map gives it. */
+export function histogramChart({ edges, counts }: Summary, look: HistogramLook): ChartElement {
   const bars = counts.map((count, i) => ({ from: edges[i], to: edges[i + 1], count }));
-  const span = edges.length > 1 ? [Math.min(edges[0], ...how.marks), edges[edges.length - 1]] : [0, 1];
-  const marks = how.marks.filter((mark) => mark <= span[1]);
+  const [low, high] = [Math.min(edges[0], ...look.marks, 0), edges[edges.length - 1]];
+  const marks = look.marks.filter((mark) => mark <= high);
   return Plot.plot({
     ...frame,
     height: 150,
     marginTop: marks.length > 0 ? 26 : 8,
-    width: how.width,
-    x: { ...axis, domain: span, ticks: ticksOf({ low: span[0], high: span[1] }, 6), label: how.label },
+    width: look.width,
+    x: { ...axis, domain: [low, high], ticks: ticksOf({ low, high }, 6), label: look.label },
     y: { ...axis, ticks: 4, label: null },
     marks: [
-      Plot.rectY(bars, {
-        x1: "from",
-        x2: "to",
-        y: "count",
-        fill: (bar) => colourAt(how, bar),
-        stroke: "currentColor",
-        strokeWidth: 0.5,
-        strokeOpacity: 0.55,
-      }),
-      Plot.ruleY([0]),
-      Plot.ruleX(marks, { strokeDasharray: "3 2", insetTop: -4 }),
+      Plot.rect(marks, { x1: low, x2: (mark: number) => mark, fill: "currentColor", fillOpacity: 0.09 }),
+      Plot.ruleX(marks, { strokeWidth: 0.75, strokeDasharray: "3 2", insetTop: -4 }),
       markNames(
         marks.filter((_, i) => i % 2 === 0),
         -6,
@@ -94,16 +98,26 @@ export function histogramChart(
         marks.filter((_, i) => i % 2 === 1),
         -16,
       ),
+      Plot.rectY(bars, { x1: "from", x2: "to", y: "count", fill: (bar) => colourAt(look, bar), ...barOutline }),
+      Plot.ruleY([0]),
     ],
   });
 }
 
+const barOutline = { stroke: "currentColor", strokeWidth: 0.5, strokeOpacity: 0.55 };
+
 /** Names marks above the frame. Neighbours stand on different lines, so that they do not touch. */
 function markNames(marks: number[], dy: number) {
-  return Plot.text(marks, { x: (mark: number) => mark, frameAnchor: "top", text: String, dy, lineAnchor: "bottom" });
+  return Plot.text(marks, {
+    x: (mark: number) => mark,
+    frameAnchor: "top",
+    text: String,
+    dy,
+    lineAnchor: "bottom",
+  });
 }
 
-function colourAt({ quantity, window }: { quantity: Quantity; window: Window }, bar: { from: number; to: number }) {
+function colourAt({ quantity, window }: HistogramLook, bar: { from: number; to: number }) {
   const share = ((bar.from + bar.to) / 2 - window.low) / (window.high - window.low || 1);
   const entry = Math.min(Math.max(Math.round(share * (tableSize - 1)), 0), tableSize - 1);
   const pixel = tableFor(quantity)[entry];

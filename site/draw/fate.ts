@@ -32,3 +32,9 @@ export function insideMask(value: number): boolean {
   const { treatment } = fateOf(value);
   return treatment !== "paper" && treatment !== "masked";
 }
+
+/** Tells whether a voxel has a rate and, with a calibration, a pO2. */
+export function hasValue(value: number): boolean {
+  const { treatment } = fateOf(value);
+  return treatment === "colour" || treatment === "negative";
+}

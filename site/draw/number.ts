@@ -37,6 +37,7 @@ export function plain(value: number, digits = 6): string {
 
 export function percent(share: number): string {
   const value = share * 100;
+  if (value === 0) return "0 %";
   if (value > 0 && value < 0.1) return "< 0.1 %";
   return `${value.toFixed(value < 10 ? 1 : 0)} %`;
 }

@@ -168,24 +168,37 @@ function label(
   pen.fillText(text, x, y);
 }
 
+/** Marks the cursor by its voxel, short arms beside it and ticks at the border, so that little of the map is hidden. */
 function drawCursor(sheet: Sheet): void {
   const { pen, size, scene } = sheet;
   const { u, v } = axesOf(scene.plane);
   const [x, y, w, h] = cellRect(sheet, scene.cursor[u], scene.grid.n[v] - 1 - scene.cursor[v]);
-  const gap = Math.max(w, 6);
   const [cx, cy] = [x + w / 2, y + h / 2];
+  const [tick, gap, arm] = [9, w / 2 + 3, w / 2 + 12];
   pen.beginPath();
-  line(pen, 0, cy, cx - gap, cy);
-  line(pen, cx + gap, cy, size, cy);
-  line(pen, cx, 0, cx, cy - gap);
-  line(pen, cx, cy + gap, cx, size);
   pen.rect(x - 0.5, y - 0.5, w + 1, h + 1);
+  for (const [from, to] of [
+    [0, tick],
+    [size - tick, size],
+    [cx - arm, cx - gap],
+    [cx + gap, cx + arm],
+  ]) {
+    line(pen, from, cy, to, cy);
+  }
+  for (const [from, to] of [
+    [0, tick],
+    [size - tick, size],
+    [cy - arm, cy - gap],
+    [cy + gap, cy + arm],
+  ]) {
+    line(pen, cx, from, cx, to);
+  }
   strokeTwice(pen, scene.tones);
 }
 
 function strokeTwice(pen: CanvasRenderingContext2D, tones: Tones): void {
   pen.strokeStyle = tones.paper;
-  pen.globalAlpha = 0.55;
+  pen.globalAlpha = 0.6;
   pen.lineWidth = 3;
   pen.stroke();
   pen.globalAlpha = 1;

@@ -1,13 +1,13 @@
 // Handing back: maps and recipe as files, and a recipe taken in again.
 
 import { signal } from "@preact/signals";
-import { insideMask } from "../draw/fate";
+import { hasValue } from "../draw/fate";
 import type { Fault, Recipe } from "../wire.gen";
 import { acquisition } from "./acquisition";
 import { setRecipe } from "./edit";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
-import { type Strand } from "./strand";
+import { isOlder, textOf, type Oxygen, type Rates, type Strand } from "./strand";
 import { delay } from "./view";
 
 export type MapName = "pO2" | "rate" | "amplitude" | "mask";
@@ -17,21 +17,28 @@ export const mapNames: MapName[] = ["pO2", "rate", "amplitude", "mask"];
 /** Why the last saving or loading did not work; null when it did. */
 export const saveFault = signal<Fault | null>(null);
 
-/** Tells whether a strand has the map to be saved. */
+const stageOf: Record<MapName, "reconstruct" | "derive"> = {
+  pO2: "derive",
+  rate: "derive",
+  amplitude: "reconstruct",
+  mask: "derive",
+};
+
+/** Tells whether a strand has the map, and has it with the settings that stand now. */
 export function canSave(strand: Strand, map: MapName): boolean {
-  const { oxygen, rates, images } = strand;
-  if (map === "pO2") return Boolean(oxygen.value?.pO2);
-  return Boolean({ rate: rates, amplitude: images, mask: oxygen }[map].value);
+  const { oxygen, images } = strand;
+  const shown = { pO2: oxygen.value?.pO2, rate: oxygen.value, amplitude: images.value, mask: oxygen.value }[map];
+  return Boolean(shown) && !isOlder(strand, stageOf[map]);
 }
 
 export async function saveMap(strand: Strand, map: MapName): Promise<void> {
   const values = valuesOf(strand, map);
   const plan = strand.plan.value;
   const opened = acquisition.value;
-  if (!values || !plan || !opened) return;
+  if (!values || !plan || !opened || !canSave(strand, map)) return;
   await noted(async () => {
     const request = { recipe: plan.recipe, quantity: map, delayUS: opened.delayUS[delay.value] };
-    const { body, buffers } = await engine().request("export", request, [new Float32Array(values)]);
+    const { body, buffers } = await engine().request("export", request, [values]);
     download(body.name, new Blob([buffers[0]], { type: body.type }));
   });
 }
@@ -43,7 +50,7 @@ export async function saveMaps(strand: Strand): Promise<void> {
 /** Saves the complete recipe of the last plan that held. */
 export function saveRecipe(strand: Strand): void {
   const recipe = strand.plan.value?.recipe ?? strand.recipe.value;
-  const text = JSON.stringify(recipe, null, 2) + "\n";
+  const text = textOf(recipe, 2) + "\n";
   const stem = acquisition.value?.name ?? "acquisition";
   download(`${stem}-recipe.json`, new Blob([text], { type: "application/json" }));
 }
@@ -66,12 +73,18 @@ async function noted(work: () => Promise<void>): Promise<void> {
   }
 }
 
-function valuesOf(strand: Strand, map: MapName): ArrayLike<number> | null {
-  const { fate, pO2 } = strand.oxygen.value ?? {};
-  if (map === "pO2") return pO2 ?? null;
-  if (map === "rate") return strand.rates.value?.rate ?? null;
-  if (map === "mask") return fate?.map((value) => Number(insideMask(value))) ?? null;
-  return strand.images.value?.delays[delay.value] ?? null;
+/** Returns the array of a map as the export takes it: the values, or for the mask the fates. */
+function valuesOf(strand: Strand, map: MapName): Float32Array<ArrayBuffer> | Uint8Array<ArrayBuffer> | null {
+  const oxygen = strand.oxygen.value;
+  if (map === "amplitude") return strand.images.value?.delays[delay.value] ?? null;
+  if (map === "rate") return inMap(oxygen, strand.rates.value);
+  return (map === "mask" ? oxygen?.fate : oxygen?.pO2) ?? null;
+}
+
+/** Returns the rates with NaN outside the map. */
+function inMap(oxygen: Oxygen | null, rates: Rates | null): Float32Array<ArrayBuffer> | null {
+  if (!oxygen || !rates || oxygen.fate.length !== rates.rate.length) return null;
+  return rates.rate.map((rate, i) => (hasValue(oxygen.fate[i]) ? rate : NaN));
 }
 
 function download(name: string, blob: Blob): void {

@@ -62,7 +62,7 @@ export async function fit(plan: Plan, images: Images, tell: Tell): Promise<Rates
 
 /** Makes mask, pO2 and numbers out of a finished fit. */
 export async function derive(plan: Plan, images: Images, rates: Rates, tell: Tell): Promise<Oxygen> {
-  const inputs = [copyOf(images.delays[plan.referenceDelay]), rates.rate, rates.rateSE, rates.status];
+  const inputs = [images.delays[plan.referenceDelay], rates.rate, rates.rateSE, rates.status];
   const onProgress = ({ fraction }: { fraction: number }) => tell(fraction);
   const { body, buffers } = await engine().request("derive", { recipe: plan.recipe }, inputs, { onProgress });
   return {
@@ -73,10 +73,6 @@ export async function derive(plan: Plan, images: Images, rates: Rates, tell: Tel
     pO2SE: body.pO2 ? new Float32Array(buffers[2]) : null,
     derived: body,
   };
-}
-
-function copyOf(values: Float32Array): Float32Array<ArrayBuffer> {
-  return new Float32Array(values);
 }
 
 function emptyRates(key: string, grid: Grid): Rates {

@@ -20,7 +20,7 @@ export type StageState =
 export interface Images {
   key: string;
   grid: Grid;
-  delays: Float32Array[];
+  delays: Float32Array<ArrayBuffer>[];
   noiseSD: number[];
 }
 
@@ -38,7 +38,7 @@ export interface Rates {
 export interface Oxygen {
   key: string;
   grid: Grid;
-  fate: Uint8Array;
+  fate: Uint8Array<ArrayBuffer>;
   pO2: Float32Array<ArrayBuffer> | null;
   pO2SE: Float32Array | null;
   derived: Derived;
@@ -98,7 +98,10 @@ export function isOlder(strand: Strand, stage: "reconstruct" | "fit" | "derive")
   return !current || strand.plan.value?.keys[stage] !== shown.key;
 }
 
-/** Returns the recipe as JSON text, the form in which it is checked. */
-export function textOf(recipe: Recipe): string {
-  return JSON.stringify(recipe);
+/**
+ * Returns the recipe as JSON text, the form in which it is checked and saved. A calibration that is not there is said
+ * in so many words, because what a text leaves out is taken from the defaults of the data.
+ */
+export function textOf(recipe: Recipe, indent = 0): string {
+  return JSON.stringify({ ...recipe, calibration: recipe.calibration ?? null }, null, indent);
 }

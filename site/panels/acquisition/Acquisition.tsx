@@ -119,7 +119,7 @@ function Charts({ curves }: { curves: Traces }) {
     <div class="charts">
       {timeNS.length > 0 && (
         <Chart
-          title="phased trace, real — imaginary - -"
+          title="trace: real, imaginary (broken)"
           draw={(width) => traceChart(curves, width)}
           summary={`phased trace of shot ${shot.value} over ${timeNS.length} samples`}
           table={() => traceTable(curves)}

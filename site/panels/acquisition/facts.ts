@@ -60,6 +60,6 @@ function notedFacts({ optional }: Opened): Fact[] {
 }
 
 function rangeOf(values: number[]): string {
-  const [low, high] = [Math.min(...values), Math.max(...values)];
-  return low === high ? plain(low, 4) : `${plain(low, 4)} to ${plain(high, 4)}`;
+  const [low, high] = [plain(Math.min(...values), 4), plain(Math.max(...values), 4)];
+  return low === high ? low : `${low} to ${high}`;
 }

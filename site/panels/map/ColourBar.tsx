@@ -88,7 +88,7 @@ function WindowInputs({ quantity, title, window }: { quantity: Quantity; title: 
         value={window.high}
         enter={(text) => enter("high", text)}
       />
-      <button type="button" disabled={automatic && !wrong} onClick={reset} aria-label={`automatic window for ${title}`}>
+      <button type="button" disabled={automatic && !wrong} onClick={reset} aria-label={`auto window for ${title}`}>
         auto
       </button>
       {wrong && <p class="fault">from must be below to</p>}
@@ -125,7 +125,7 @@ function DelaySwitch() {
         checked={oneWindowForDelays.value}
         onChange={(event) => (oneWindowForDelays.value = event.currentTarget.checked)}
       />
-      one automatic window for all delays
+      one auto window for all delays
     </label>
   );
 }

@@ -22,7 +22,7 @@ export function Masthead() {
     <header class="masthead">
       <div class="name">
         <h1>Torrloom</h1>
-        <p>pO₂ maps from the raw measurements of a pulse EPR oxygen imager, computed on this machine</p>
+        <p>pO₂ maps from the raw data of a pulse EPR oxygen imager</p>
         {acquisition.value?.madeUp && (
           <strong class="tag" data-made-up>
             Made-up data
@@ -57,9 +57,9 @@ function Actions() {
       <label class="theme">
         <span class="unseen">Theme</span>
         <select id="theme" value={theme.value} onChange={(e) => (theme.value = e.currentTarget.value as Theme)}>
-          <option value="system">as the system</option>
-          <option value="light">light</option>
-          <option value="dark">dark</option>
+          <option value="system">light or dark</option>
+          <option value="light">always light</option>
+          <option value="dark">always dark</option>
         </select>
       </label>
     </div>

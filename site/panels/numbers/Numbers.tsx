@@ -26,7 +26,7 @@ export function Numbers({ strand }: { strand: Strand }) {
           </div>
         ))}
         <div>
-          <dt>time in all</dt>
+          <dt>time of the last run</dt>
           <dd data-number="seconds">{seconds(secondsOf(strand))}</dd>
         </div>
       </dl>
@@ -40,7 +40,7 @@ function Histogram({ summary, quantity, name }: { summary: Summary; quantity: Qu
   const marks = summary.fractions?.map(({ threshold }) => threshold) ?? [];
   return (
     <Chart
-      title={`voxels by ${name}`}
+      title={`voxels by ${name}${shadedWords(marks, unit)}`}
       table={() => binTable(summary, unit)}
       summary={`histogram of ${name} in ${unit}, median ${plain(summary.median, 3)}`}
       draw={(width) => histogramChart(summary, { quantity, window, label: `${name} in ${unit}`, marks, width })}
@@ -48,9 +48,18 @@ function Histogram({ summary, quantity, name }: { summary: Summary; quantity: Qu
   );
 }
 
-function binTable({ edges, counts }: Summary, unit: string): Table {
+function shadedWords(marks: number[], unit: string): string {
+  return marks.length === 0 ? "" : `; shaded: ≤ ${marks.join(", ≤ ")} ${unit}`;
+}
+
+function binTable({ edges, counts, below, above }: Summary, unit: string): Table {
+  const last = edges.length - 1;
   const rows = counts.map((n, i) => [plain(edges[i], 4), plain(edges[i + 1], 4), String(n)]);
-  return { head: [`from, ${unit}`, `to, ${unit}`, "voxels"], rows };
+  const outside = [
+    ["all below", plain(edges[0], 4), String(below)],
+    [plain(edges[last], 4), "all above", String(above)],
+  ];
+  return { head: [`from, ${unit}`, `to, ${unit}`, "voxels"], rows: [outside[0], ...rows, outside[1]] };
 }
 
 interface Figure {
@@ -73,6 +82,7 @@ function figuresOf(s: Summary, derived: Derived): Figure[] {
     { key: "medianSE", label: "median standard error", text: `${say(s.medianSE)} ${unit}` },
     ...fractionsOf(s),
     { key: "voxels", label: "voxels", text: count(s.count) },
+    { key: "beyond", label: "left, right of the bars", text: `${count(s.below)}, ${count(s.above)}` },
     ...(derived.pO2 ? [{ key: "negative", label: "below zero", text: count(derived.negative) }] : []),
   ];
 }

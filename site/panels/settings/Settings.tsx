@@ -51,7 +51,7 @@ function StrayFault({ strand, catalogue }: { strand: Strand; catalogue: Setting[
   const fault = strand.recipeFault.value;
   if (!fault || catalogue.some(({ path }) => faultAt(strand, path))) return null;
   return (
-    <p class="fault" data-fault="recipe">
+    <p class="fault" data-fault="recipe" role="status">
       {wordsOf(fault)}
     </p>
   );

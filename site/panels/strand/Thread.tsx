@@ -45,6 +45,7 @@ export function StageWords({ strand, stages }: { strand: Strand; stages: StageNa
   const current = stages.find((name) => strand.stages[name].value.state !== "done") ?? stages[stages.length - 1];
   const state = strand.stages[current].value;
   const older = (["reconstruct", "fit", "derive"] as const).some((n) => stages.includes(n) && isOlder(strand, n));
+  if (current === "plan" && state.state === "failed") return <p class="words fault">these settings do not hold</p>;
   if (state.state === "failed")
     return (
       <p class="words fault" role="status">

@@ -17,7 +17,9 @@ export function ViewBar() {
       <SlicePicker grid={grid} />
       <DelayPicker />
       <p class="readout" id="readout" role="status">
-        {readoutOf(strand)}
+        {readoutOf(strand).map((part, i) => (
+          <span key={i}>{part} </span>
+        ))}
       </p>
     </section>
   );

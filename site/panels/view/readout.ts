@@ -8,21 +8,21 @@ import type { Strand } from "../../store/strand";
 import { cursorMM, delay } from "../../store/view";
 import type { Quantity } from "../../draw/colour";
 
-/** Returns one sentence on the voxel under the cursor. */
-export function readoutOf(strand: Strand): string {
+/** Returns one sentence on the voxel under the cursor, in parts: its place, and its value in each map. */
+export function readoutOf(strand: Strand): string[] {
   const grid = strand.images.value?.grid;
-  if (!grid) return "";
+  if (!grid) return [];
   const voxel = voxelAt(grid, cursorMM.value);
   const [x, y, z] = centreOf(grid, voxel).map((mm) => fixed(mm, 1));
   const place = `voxel ${voxel.join(", ")} at x ${x}, y ${y}, z ${z} mm`;
   const us = plain(acquisition.value?.delayUS[delay.value] ?? 0, 4);
   const rateName = acquisition.value?.rateName ?? "rate";
-  const values = [
-    `amplitude at ${us} µs ${valueAt(strand, "amplitude")}`,
-    `${rateName} ${valueAt(strand, "rate")}`,
+  return [
+    `${place}:`,
+    `amplitude at ${us} µs ${valueAt(strand, "amplitude")};`,
+    `${rateName} ${valueAt(strand, "rate")};`,
     `pO₂ ${valueAt(strand, "pO2")}`,
   ];
-  return `${place}: ${values.join("; ")}`;
 }
 
 /** Returns the value of a map under the cursor with error and unit, or why there is none. */
