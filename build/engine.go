@@ -33,8 +33,8 @@ func compileEngine(root, id string) ([]byte, error) {
 	defer os.RemoveAll(folder)
 	path := filepath.Join(folder, "engine.wasm")
 	stamp := "-s -w -buildid= -X main.build=" + id
-	target := []string{"GOOS=js", "GOARCH=wasm", "GOFLAGS="}
-	build := command(root, target, "go", "build", "-trimpath", "-buildvcs=false", "-ldflags", stamp, "-o", path, "./wasm")
+	environment := append([]string{"GOFLAGS="}, wasmPlatform...)
+	build := command(root, environment, "go", "build", "-trimpath", "-buildvcs=false", "-ldflags", stamp, "-o", path, "./wasm")
 	if err := build.Run(); err != nil {
 		return nil, fmt.Errorf("the engine does not compile: %w", err)
 	}

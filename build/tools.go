@@ -16,13 +16,13 @@ type tool struct {
 
 var tools = []tool{
 	{"Node.js 20 or later", []string{"nodejs", "npm"},
-		[]string{"node", "-e", "process.exit(parseInt(process.versions.node) < 20)"}},
+		[]string{"node", "-e", "process.exit(parseInt(process.versions.node) < 20 ? 1 : 0)"}},
 	{"npm", []string{"npm"}, []string{"npm", "--version"}},
 	{"Chromium", []string{"chromium"}, []string{"chromium", "--version"}},
-	{"Python with NumPy", []string{"python3-numpy"}, []string{"python3", "-c", "import numpy"}},
-	{"SciPy", []string{"python3-scipy"}, []string{"python3", "-c", "import scipy"}},
-	{"scikit-image", []string{"python3-skimage"}, []string{"python3", "-c", "import skimage"}},
-	{"NiBabel", []string{"python3-nibabel"}, []string{"python3", "-c", "import nibabel"}},
+	{"Python with NumPy", []string{"python3-numpy"}, []string{"/usr/bin/python3", "-c", "import numpy"}},
+	{"SciPy", []string{"python3-scipy"}, []string{"/usr/bin/python3", "-c", "import scipy"}},
+	{"scikit-image", []string{"python3-skimage"}, []string{"/usr/bin/python3", "-c", "import skimage"}},
+	{"NiBabel", []string{"python3-nibabel"}, []string{"/usr/bin/python3", "-c", "import nibabel"}},
 }
 
 // installTools installs what is missing, where that can be done unasked: as root on Debian, and npm's packages in the
