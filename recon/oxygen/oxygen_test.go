@@ -140,7 +140,7 @@ func TestMapInvertsTheCalibration(t *testing.T) {
 func TestMapKeepsNaNAndCountsNegatives(t *testing.T) {
 	c := Calibration{Rate: "R2", ZeroPerUS: 0.3, SlopePerUSPerTorr: 0.01}
 	nan := float32(math.NaN())
-	po2, se, err := Map([]float32{nan, 0.2, 0.4, 0.25, nan}, []float32{nan, 0.01, 0.01, 0.01, nan}, c)
+	po2, se, err := Map([]float32{nan, 0.2, 0.301, 0.299, nan}, []float32{nan, 0.01, 0.01, 0.01, nan}, c)
 	if err != nil {
 		t.Fatal(err)
 	}

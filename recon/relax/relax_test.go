@@ -118,6 +118,30 @@ func TestDerivativesOfEveryCurveMatchDifferences(t *testing.T) {
 	}
 }
 
+func TestFrameDerivativesMatchDifferences(t *testing.T) {
+	const h = 1e-4
+	for _, m := range Models {
+		f := fitter(t, m, logDelays, logSpaced(0.01, 0.03, len(logDelays)), Settings{})
+		at, up, down := newFrame(len(logDelays)), newFrame(len(logDelays)), newFrame(len(logDelays))
+		for _, rate := range spread(f, 10) {
+			x := math.Log(rate)
+			f.frameAt(x, at)
+			f.frameAt(x+h, up)
+			f.frameAt(x-h, down)
+			near(t, m.Name+" |u|²", dot(at.u, at.u), 1, 1e-14)
+			for d := range at.u {
+				// Central differences of a unit curve err by h² = 1e-8, the second also by rounding, 1e-16/h².
+				if off := (up.u[d]-down.u[d])/(2*h) - at.du[d]; !(math.Abs(off) <= 1e-7) {
+					t.Errorf("%s at rate %g, delay %d: du off by %g", m.Name, rate, d, off)
+				}
+				if off := (up.u[d]-2*at.u[d]+down.u[d])/(h*h) - at.d2u[d]; !(math.Abs(off) <= 1e-6) {
+					t.Errorf("%s at rate %g, delay %d: d2u off by %g", m.Name, rate, d, off)
+				}
+			}
+		}
+	}
+}
+
 func TestNoiselessDataGiveBackTheirParameters(t *testing.T) {
 	for _, m := range Models {
 		f := fitter(t, m, logDelays, same(0.02, len(logDelays)), Settings{})

@@ -80,26 +80,31 @@ func (f *Fitter) tabulateSeeds() {
 }
 
 func (f *Fitter) tabulateCurves() {
-	t, fr := &f.table, newFrame(len(f.delayUS))
+	t := &f.table
 	t.curves = make([][half]float64, t.nodes*2*len(f.delayUS))
 	t.readings = make([][coefficients]reading, t.nodes)
 	for k := range t.nodes {
-		curves := make([][coefficients]float64, len(f.delayUS))
-		var rate, spread, perF, amplitudeSE [coefficients]float64
-		for j := range coefficients {
-			x := f.nodeX(k) + f.lnStep*chebyshevPoint(j)
-			f.frameAt(x, fr)
-			for d, u := range fr.u {
-				curves[d][j] = u * f.rootWeight[d]
-			}
-			rate[j], spread[j] = math.Exp(x), math.Exp(x)/fr.sensitivity
-			perF[j], amplitudeSE[j] = fr.perF, fr.amplitudeSE
+		f.tabulateNode(k)
+	}
+}
+
+// tabulateNode samples the curve and the readings at the Chebyshev points around a node and stores their coefficients.
+func (f *Fitter) tabulateNode(k int) {
+	fr, curves := newFrame(len(f.delayUS)), make([][coefficients]float64, len(f.delayUS))
+	var rate, spread, perF, amplitudeSE [coefficients]float64
+	for j := range coefficients {
+		x := f.nodeX(k) + f.lnStep*chebyshevPoint(j)
+		f.frameAt(x, fr)
+		for d, u := range fr.u {
+			curves[d][j] = u * f.rootWeight[d]
 		}
-		f.storeCurves(k, curves)
-		rate, spread, perF, amplitudeSE = powers(rate), powers(spread), powers(perF), powers(amplitudeSE)
-		for m := range coefficients {
-			t.readings[k][m] = reading{rate[m], spread[m], perF[m], amplitudeSE[m]}
-		}
+		rate[j], spread[j] = math.Exp(x), math.Exp(x)/fr.sensitivity
+		perF[j], amplitudeSE[j] = fr.perF, fr.amplitudeSE
+	}
+	f.storeCurves(k, curves)
+	rate, spread, perF, amplitudeSE = powers(rate), powers(spread), powers(perF), powers(amplitudeSE)
+	for m := range coefficients {
+		f.table.readings[k][m] = reading{rate[m], spread[m], perF[m], amplitudeSE[m]}
 	}
 }
 
