@@ -1,5 +1,7 @@
 //go:build js && wasm
 
+//lint:file-ignore SA4010,SA4017,SA5007,U1000 what is wrong with this file is its purpose
+
 package main
 
 // crashKind is a request that no page makes: the tests ask for it through the console, to see that the page survives

@@ -37,7 +37,7 @@ func TestAnEngineThatHasGrownTooLargeIsReplaced(t *testing.T) {
 	const grown = `torrloomEngine.slots[0].client.memoryBytes`
 	p := openEngine(t)
 	evaluate[string](p, requestText("demo", "{noise: false}"))
-	from := evaluate[float64](p, `(globalThis.firstClient = torrloomEngine.slots[0].client, `+grown+`)`)
+	evaluate[string](p, `globalThis.firstClient = torrloomEngine.slots[0].client; ""`)
 	said := evaluate[string](p, `torrloomEngine.request("crash-on-purpose", "grow", [], {worker: 0}).catch((e) =>
 		e.fault.kind + " " + (firstClient.memoryBytes > 2 ** 30))`)
 	if said != "bug true" {
@@ -47,8 +47,8 @@ func TestAnEngineThatHasGrownTooLargeIsReplaced(t *testing.T) {
 		t.Error("the worker was kept")
 	}
 	demandAllWorkersHoldTheDemo(t, p)
-	if after := evaluate[float64](p, grown); !(after < 2*from) {
-		t.Errorf("the worker holds %g bytes after it was replaced, %g before it grew", after, from)
+	if after := evaluate[float64](p, grown); !(after > 0 && after < 1<<30) {
+		t.Errorf("the worker that took its place holds %g bytes, wanted less than 1 GiB", after)
 	}
 	p.demandSilence()
 }
