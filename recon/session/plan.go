@@ -65,7 +65,7 @@ func NewPlan(a *acquisition.Acquisition, dataHash string, extentMM float64, r re
 	}
 	p.ReconstructJobs = splitDelays(a.Delays, workers)
 	p.FitJobs = splitVoxels(g.Voxels(), workers)
-	p.MemoryBytes = estimate(a, r, g, extentMM, len(p.ReconstructJobs[0]))
+	p.MemoryBytes = estimate(a, r, g, extentMM, largest(p.ReconstructJobs))
 	if p.MemoryBytes > MemoryLimit {
 		return nil, fault.New(fault.TooLarge, "recipe reconstruction.matrix", "%dx%dx%d voxels at %d delays need about %.1f GiB per worker, the limit is %.1f GiB; lower the matrix size",
 			g.N[0], g.N[1], g.N[2], a.Delays, float64(p.MemoryBytes)/(1<<30), float64(MemoryLimit)/(1<<30))
@@ -73,15 +73,25 @@ func NewPlan(a *acquisition.Acquisition, dataHash string, extentMM float64, r re
 	return p, nil
 }
 
-// splitDelays deals the delays out to at most workers jobs of nearly equal size, in order.
+// splitDelays deals the delays out to at most workers jobs, in order and in pairs: two delays share one complex lane, so
+// that a pair is the unit of work, and the rounding of a delay must not depend on how many workers there are.
 func splitDelays(delays, workers int) [][]int {
-	jobs := min(delays, workers)
+	pairs := (delays + 1) / 2
+	jobs := min(pairs, workers)
 	out := make([][]int, jobs)
 	for d := range delays {
-		j := d * jobs / delays
+		j := d / 2 * jobs / pairs
 		out[j] = append(out[j], d)
 	}
 	return out
+}
+
+func largest(jobs [][]int) int {
+	most := 0
+	for _, job := range jobs {
+		most = max(most, len(job))
+	}
+	return most
 }
 
 func splitVoxels(voxels, workers int) [][2]int {

@@ -56,7 +56,7 @@ func TestSameDataAndRecipeGiveTheSameNumbers(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	again, err := Run(a, "data", whole, 3) // the written recipe, another number of workers
+	again, err := Run(a, "data", whole, 2) // the written recipe, another number of workers
 	if err != nil {
 		t.Fatal(err)
 	}
