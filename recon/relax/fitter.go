@@ -91,7 +91,10 @@ func (f *Fitter) ResidualScale(chiSquare float64) float64 {
 	return math.Sqrt(chiSquare / float64(free))
 }
 
-// Fit returns the fit of one voxel: the best node of the table, refined as by FitFrom. y has one value per delay.
+// Fit returns the fit of one voxel: the best seed of the table, refined as by FitFrom. y has one value per delay.
+//
+// Seeds lie about 0.6 apart in ln R, closer than two minima of a sum of squares over exponentials. Voxels with little
+// but noise are the exception: about one in ten thousand has a second minimum whose χ² is lower by less than 0.1.
 func (f *Fitter) Fit(y []float64) Answer {
 	data, status := f.whiten(y)
 	if status != Answered {

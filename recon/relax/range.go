@@ -10,8 +10,8 @@ import (
 
 // Settings limits the rates that can be an answer. A limit of zero is chosen from the delays.
 //
-// The chosen range is the stretch of rates that the delays can see, around the one they see best. How well they see a rate is
-// the sensitivity |∂u/∂ln R|, the change of the curve's shape per e-fold of the rate relative to the curve: the
+// The chosen range is the stretch of rates that the delays can see, around the one they see best. How well they see a
+// rate is the sensitivity |∂u/∂ln R|, the change of the curve's shape per e-fold of the rate relative to the curve: the
 // standard error of ln R is 1/(sensitivity · signal-to-noise ratio of the whole curve). A rate is seen when the
 // sensitivity is at least 0.01, because even a voxel with a ratio of 100, better than this kind of imaging gives, could
 // not tell a less visible rate R from e·R; and when the change of the curve along the delays (for a decay the curve
@@ -52,9 +52,9 @@ func (f *Fitter) setRange(s Settings) error {
 	if err := s.Check(); err != nil {
 		return err
 	}
-	var any bool
-	f.lnMin, f.lnMax, any = f.rangeOf(seen)
-	if !any {
+	var some bool
+	f.lnMin, f.lnMax, some = f.rangeOf(seen)
+	if !some {
 		return fault.New(fault.NoAnswer, "delay_us", "%v µs cannot tell rates apart in a %s; add delays that differ", f.delayUS, f.model.Label)
 	}
 	if s.RateMinPerUS > 0 {
@@ -74,7 +74,7 @@ func (f *Fitter) setRange(s Settings) error {
 // rangeOf returns the ends, as ln R, of the stretch of rates that have a given visibility, around the rate of greatest
 // sensitivity. A rate below 1e-5 of the slowest time scale bends no curve, and one above 1e3 of the fastest has died out
 // before the second delay.
-func (f *Fitter) rangeOf(least visibility) (lnMin, lnMax float64, any bool) {
+func (f *Fitter) rangeOf(least visibility) (lnMin, lnMax float64, some bool) {
 	const step = 0.05 // the visibility changes over about one e-fold
 	fastest, slowest := f.timeScales()
 	start := math.Log(1e-5 / slowest)

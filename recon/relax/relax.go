@@ -6,7 +6,7 @@
 // the noise of each delay.
 //
 // All members keep one promise: a voxel gets the rate with the least sum of squares within the rate range, or it gets a
-// Status that says why there is none and NaN for its numbers. Nothing is guessed, clipped or filled.
+// Status that says why there is none, and NaN for its numbers. Nothing is guessed, clipped or filled.
 //
 // A new model is one file with a type that is a Curve, and one row in Models.
 package relax
