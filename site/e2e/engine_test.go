@@ -46,7 +46,7 @@ func TestAnEngineThatHasGrownTooLargeIsReplaced(t *testing.T) {
 	if evaluate[bool](p, `torrloomEngine.slots[0].client === firstClient`) {
 		t.Error("the worker was kept")
 	}
-	demandAllWorkersHoldTheDemo(t, p)
+	demandAllWorkersHoldTheData(t, p)
 	if after := evaluate[float64](p, grown); !(after > 0 && after < 1<<30) {
 		t.Errorf("the worker that took its place holds %g bytes, wanted less than 1 GiB", after)
 	}
@@ -87,15 +87,15 @@ func TestPageSurvivesEveryDeathOfAnEngine(t *testing.T) {
 			if !strings.HasPrefix(said, "EngineFault: crash-on-purpose: ") || !strings.Contains(said, word) {
 				t.Errorf("the page was told %q, wanted an EngineFault that says %q", said, word)
 			}
-			demandAllWorkersHoldTheDemo(t, p)
+			demandAllWorkersHoldTheData(t, p)
 		})
 	}
 	p.t = t
 	p.demandSilence()
 }
 
-// demandAllWorkersHoldTheDemo asks every worker for something that needs an open acquisition.
-func demandAllWorkersHoldTheDemo(t *testing.T, p *page) {
+// demandAllWorkersHoldTheData asks every worker for something that needs an open acquisition.
+func demandAllWorkersHoldTheData(t *testing.T, p *page) {
 	t.Helper()
 	said := evaluate[[]string](p, `Promise.all(Array.from({length: torrloomEngine.workers}, (_, worker) =>
 		torrloomEngine.request("traces", {delay: 0, shot: 0}, [], {worker}).then(() => "done", (e) => e.message)))`)
@@ -130,6 +130,6 @@ func TestCancelEndsARunningJob(t *testing.T) {
 	if !(took.Milliseconds < float64(limit.Milliseconds())) {
 		t.Errorf("cancel took %.0f ms, wanted less than %v", took.Milliseconds, limit)
 	}
-	demandAllWorkersHoldTheDemo(t, p)
+	demandAllWorkersHoldTheData(t, p)
 	p.demandSilence()
 }

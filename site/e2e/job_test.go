@@ -62,7 +62,35 @@ func TestAFileOpensAndGivesItsMap(t *testing.T) {
 	p.giveFiles("#open-files-input", writeDemoArchive(t, "sent-by-mail.npz"))
 	p.waitFor(`document.querySelector('[data-fact="name"]').textContent.includes("sent-by-mail")`)
 	p.waitFor(mapped)
+	crashEveryWorker(p)
+	demandAllWorkersHoldTheData(t, p)
 	p.demandSilence()
+}
+
+// crashEveryWorker kills all engines, which are then replaced.
+func crashEveryWorker(p *page) {
+	p.t.Helper()
+	evaluate[string](p, `Promise.allSettled(Array.from({length: torrloomEngine.workers}, (_, worker) =>
+		torrloomEngine.request("crash-on-purpose", "panic", [], {worker}))).then(() => "")`)
+}
+
+// TestAFileThatHasChangedIsAskedForAgain changes a file on disk after it was opened, so that no new worker can open it.
+func TestAFileThatHasChangedIsAskedForAgain(t *testing.T) {
+	p := openDemo(t)
+	path := writeDemoArchive(t, "changing.npz")
+	p.giveFiles("#open-files-input", path)
+	p.waitFor(`document.querySelector('[data-fact="name"]').textContent.includes("changing")`)
+	p.waitFor(mapped)
+	if err := os.WriteFile(path, []byte("overwritten"), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	crashEveryWorker(p)
+	const wanted = "EngineFault: changing.npz: the file has changed or gone since you picked it; drop it again"
+	if said := evaluate[string](p, requestText("traces", "{delay: 0, shot: 0}")); said != wanted {
+		t.Errorf("the page was told %q, wanted %q", said, wanted)
+	}
+	evaluate[string](p, requestText("demo", "{noise: false}"))
+	demandAllWorkersHoldTheData(t, p)
 }
 
 func TestABrokenFileIsNamedAndTheOldDataStay(t *testing.T) {
@@ -77,7 +105,7 @@ func TestABrokenFileIsNamedAndTheOldDataStay(t *testing.T) {
 	if after := evaluate[string](p, `document.querySelector('[data-fact="name"]').textContent`); after != before {
 		t.Errorf("the acquisition is now %q, wanted the old one, %q", after, before)
 	}
-	demandAllWorkersHoldTheDemo(t, p)
+	demandAllWorkersHoldTheData(t, p)
 	p.demandSilence()
 }
 
