@@ -4,6 +4,7 @@ import { useEffect, useState } from "preact/hooks";
 import { Acquisition } from "./panels/acquisition/Acquisition";
 import { Footer } from "./panels/footer/Footer";
 import { Masthead } from "./panels/masthead/Masthead";
+import { Notices } from "./panels/masthead/Notices";
 import { StrandPanel } from "./panels/strand/Strand";
 import { ViewBar } from "./panels/view/ViewBar";
 import { acquisition, openFiles } from "./store/acquisition";
@@ -21,6 +22,7 @@ export function Page() {
   return (
     <>
       <Masthead />
+      <Notices />
       <main>
         {acquisition.value ? (
           <Acquisition />

@@ -124,9 +124,7 @@ function drawEdge(sheet: Sheet, fate: Uint8Array): void {
     if (i % across > 0 && inside[i - 1] !== here) line(pen, x, y, x, y + h);
     if (i >= across && inside[i - across] !== here) line(pen, x, y, x + w, y);
   });
-  pen.strokeStyle = scene.tones.cursor;
-  pen.lineWidth = 1;
-  pen.stroke();
+  strokeTwice(pen, scene.tones);
 }
 
 function line(pen: CanvasRenderingContext2D, x0: number, y0: number, x1: number, y1: number): void {
@@ -199,7 +197,7 @@ function drawCursor(sheet: Sheet): void {
 function strokeTwice(pen: CanvasRenderingContext2D, tones: Tones): void {
   pen.strokeStyle = tones.paper;
   pen.globalAlpha = 0.6;
-  pen.lineWidth = 3;
+  pen.lineWidth = 2.5;
   pen.stroke();
   pen.globalAlpha = 1;
   pen.strokeStyle = tones.cursor;

@@ -3,7 +3,7 @@
 // reaches it, and joined when it does not.
 
 import { Cancelled } from "../engine/fault";
-import type { Measured, Plan } from "../wire.gen";
+import type { Measured, Plan, Recipe } from "../wire.gen";
 import { Cache } from "./cache";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
@@ -83,12 +83,12 @@ async function chain(strand: Strand, run: number): Promise<void> {
 
 /** Checks the recipe. On a fault the stages keep what they show. */
 async function planned(strand: Strand, run: number): Promise<Plan | null> {
-  const text = textOf(strand.recipe.value);
+  const recipe = strand.recipe.value;
   const began = performance.now();
   const at = { strand, run };
   try {
-    const plan = await patiently(at, () => askPlan(text));
-    accept(strand, plan, text);
+    const plan = await patiently(at, () => askPlan(textOf(recipe)));
+    accept(strand, plan, recipe);
     strand.stages.plan.value = { state: "done", seconds: since(began), reused: false };
     return plan;
   } catch (error) {
@@ -98,10 +98,10 @@ async function planned(strand: Strand, run: number): Promise<Plan | null> {
   }
 }
 
-function accept(strand: Strand, plan: Plan, text: string): void {
+function accept(strand: Strand, plan: Plan, recipe: Recipe): void {
   const before = strand.plan.value?.keys;
   strand.plan.value = plan;
-  strand.plannedText.value = text;
+  strand.planned.value = recipe;
   settle(strand, (name) => before?.[name] !== plan.keys[name]);
 }
 

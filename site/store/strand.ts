@@ -4,7 +4,9 @@
 import { computed, signal, type ReadonlySignal, type Signal } from "@preact/signals";
 import type { Grid } from "../draw/grid";
 import type { Fault, Plan, Recipe, Requests } from "../wire.gen";
+import { hello } from "./engine";
 import { History } from "./history";
+import { valueAt } from "./path";
 
 export const stageNames = ["plan", "measure", "reconstruct", "fit", "derive"] as const;
 
@@ -54,9 +56,9 @@ export interface Strand {
   recipe: Signal<Recipe>;
   history: History<Recipe>;
   stages: Record<StageName, Signal<StageState>>;
-  /** The last plan that held, of the recipe whose text is planned. */
+  /** The last plan that held, and the recipe that it was made of. */
   plan: Signal<Plan | null>;
-  plannedText: Signal<string>;
+  planned: Signal<Recipe | null>;
   images: Signal<Images | null>;
   rates: Signal<Rates | null>;
   oxygen: Signal<Oxygen | null>;
@@ -79,7 +81,7 @@ export function makeStrand(id: number, defaults: Recipe): Strand {
     history: new History<Recipe>(),
     stages: stages as Strand["stages"],
     plan: signal(null),
-    plannedText: signal(""),
+    planned: signal(null),
     images: signal(null),
     rates: signal(null),
     oxygen: signal(null),
@@ -94,8 +96,20 @@ export function makeStrand(id: number, defaults: Recipe): Strand {
 export function isOlder(strand: Strand, stage: "reconstruct" | "fit" | "derive"): boolean {
   const shown = { reconstruct: strand.images, fit: strand.rates, derive: strand.oxygen }[stage].value;
   if (!shown) return false;
-  const current = strand.plannedText.value === textOf(strand.recipe.value);
-  return !current || strand.plan.value?.keys[stage] !== shown.key;
+  return strand.plan.value?.keys[stage] !== shown.key || unplannedStages(strand).some((one) => reaches(one, stage));
+}
+
+/** Returns the first stages that the changes since the last plan reach, one per changed setting. */
+function unplannedStages({ recipe, planned }: Strand): StageName[] {
+  const [now, before] = [recipe.value, planned.value];
+  if (!before || now === before) return [];
+  const changed = (hello.value?.catalogue ?? []).filter(({ path }) => valueAt(now, path) !== valueAt(before, path));
+  return changed.map(({ stage }) => stage as StageName);
+}
+
+/** Tells whether a change at one stage alters the result of another. */
+function reaches(changed: StageName, stage: StageName): boolean {
+  return stageNames.indexOf(changed) <= stageNames.indexOf(stage);
 }
 
 /**

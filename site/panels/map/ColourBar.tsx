@@ -5,7 +5,8 @@ import { tableFor, tableSize, type Quantity } from "../../draw/colour";
 import { percent, plain, unitText } from "../../draw/number";
 import type { Painted } from "../../draw/slice";
 import { ticksOf, type Window } from "../../draw/window";
-import { oneWindowForDelays, setWindows, windowOf } from "../../store/view";
+import { acquisition } from "../../store/acquisition";
+import { delay, oneWindowForDelays, setWindows, windowOf } from "../../store/view";
 import { amplitudeUnit } from "../view/readout";
 
 interface Props {
@@ -20,9 +21,7 @@ export function ColourBar({ quantity, title, tally }: Props) {
     <div class="bar">
       <Colours quantity={quantity} />
       <Ticks window={window} />
-      <p class="bar-title">
-        {title} in {unitOf(quantity)}
-      </p>
+      <p class="bar-title">{barTitle(quantity, title)}</p>
       <WindowInputs quantity={quantity} title={title} window={window} />
       <p class="clipped" data-clipped={quantity}>
         {tally ? clippedWords(tally) : ""}
@@ -32,9 +31,11 @@ export function ColourBar({ quantity, title, tally }: Props) {
   );
 }
 
-function unitOf(quantity: Quantity): string {
-  if (quantity === "amplitude") return `signal ${amplitudeUnit()}`;
-  return quantity === "rate" ? unitText("1/us") : "torr";
+/** Returns quantity and unit; of an amplitude image also its delay. */
+function barTitle(quantity: Quantity, title: string): string {
+  if (quantity !== "amplitude") return `${title} in ${quantity === "rate" ? unitText("1/us") : "torr"}`;
+  const us = plain(acquisition.value?.delayUS[delay.value] ?? 0, 4);
+  return `${title} at ${us} µs in signal ${amplitudeUnit()}`;
 }
 
 function Colours({ quantity }: { quantity: Quantity }) {

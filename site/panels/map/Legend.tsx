@@ -10,12 +10,14 @@ export function Legend({ strand }: { strand: Strand }) {
   if (!derived) return null;
   return (
     <ul class="legend" aria-label="how voxels are drawn, and how many there are">
-      {derived.fates.filter(isShown).map(({ value, label, count: n }) => (
-        <li key={value} data-fate={value}>
-          <span class="swatch" data-treatment={fateOf(value).treatment} aria-hidden="true" />
-          {label} <b>{count(n)}</b>
-        </li>
-      ))}
+      {derived.fates
+        .filter((fate) => isShown(fate, derived.pO2 !== null))
+        .map(({ value, label, count: n }) => (
+          <li key={value} data-fate={value}>
+            <span class="swatch" data-treatment={fateOf(value).treatment} aria-hidden="true" />
+            {label} <b>{count(n)}</b>
+          </li>
+        ))}
       <li>
         <span class="swatch" data-treatment="edge" aria-hidden="true" />
         edge of the mask on the amplitude
@@ -25,6 +27,7 @@ export function Legend({ strand }: { strand: Strand }) {
 }
 
 /** Reasons for no answer are listed only where they occur; what every map has is always listed. */
-function isShown({ value, count: n }: FateCount): boolean {
-  return n > 0 || fateOf(value).treatment !== "hatch";
+function isShown({ value, count: n }: FateCount, calibrated: boolean): boolean {
+  const { treatment } = fateOf(value);
+  return n > 0 || (treatment !== "hatch" && (calibrated || treatment !== "negative"));
 }

@@ -28,6 +28,7 @@ export function Map({ strand, quantity, title }: Props) {
   const older = isOlder(strand, stageOf[quantity]);
   return (
     <figure class="map" data-map={quantity} data-older={older || undefined}>
+      {older && <p class="older">older than the settings</p>}
       <Canvas scene={scene} label={`${title} map`} tell={setTally} />
       <p class="at-cursor">
         at the cursor <b data-value={quantity}>{valueAt(strand, quantity)}</b>

@@ -1,20 +1,9 @@
 // Name, and the actions on the whole page.
 
-import { useRef } from "preact/hooks";
+import { useEffect, useRef } from "preact/hooks";
 import { acquisition, openDemo, openFiles } from "../../store/acquisition";
 import { theme, type Theme } from "../../store/appearance";
-import { wordsOf } from "../../store/fault";
-import { opening, openFault } from "../../store/opening";
-import {
-  canSave,
-  loadRecipe,
-  mapNames,
-  saveFault,
-  saveMap,
-  saveMaps,
-  saveRecipe,
-  type MapName,
-} from "../../store/save";
+import { canSave, loadRecipe, mapNames, saveMap, saveMaps, saveRecipe, type MapName } from "../../store/save";
 import { strands } from "../../store/strand";
 
 export function Masthead() {
@@ -30,7 +19,6 @@ export function Masthead() {
         )}
       </div>
       <Actions />
-      <Faults />
     </header>
   );
 }
@@ -57,9 +45,9 @@ function Actions() {
       <label class="theme">
         <span class="unseen">Theme</span>
         <select id="theme" value={theme.value} onChange={(e) => (theme.value = e.currentTarget.value as Theme)}>
-          <option value="system">light or dark</option>
-          <option value="light">always light</option>
-          <option value="dark">always dark</option>
+          <option value="system">system theme</option>
+          <option value="light">light theme</option>
+          <option value="dark">dark theme</option>
         </select>
       </label>
     </div>
@@ -102,13 +90,9 @@ const wordsFor: Record<MapName, string> = {
 function SaveMaps() {
   const menu = useRef<HTMLDetailsElement>(null);
   const strand = strands.value[0];
-  const close = (event: KeyboardEvent) => {
-    if (event.key !== "Escape") return;
-    menu.current!.open = false;
-    menu.current!.querySelector("summary")!.focus();
-  };
+  useClosing(menu);
   return (
-    <details class="menu" ref={menu} onKeyDown={close}>
+    <details class="menu" ref={menu}>
       <summary id="save-maps">Save maps</summary>
       <div class="menu-body">
         <p>NIfTI-1, compressed, in mm</p>
@@ -130,25 +114,22 @@ function SaveMaps() {
   );
 }
 
-function Faults() {
-  return (
-    <div class="notices" role="status">
-      {opening.value && (
-        <p class="notice" data-opening>
-          Opening {opening.value} …
-        </p>
-      )}
-      {openFault.value && (
-        <p class="notice fault" data-fault="open">
-          {wordsOf(openFault.value)} {acquisition.value && <span>The acquisition that was open stays open.</span>}{" "}
-          <button onClick={() => (openFault.value = null)}>Dismiss</button>
-        </p>
-      )}
-      {saveFault.value && (
-        <p class="notice fault" data-fault="save">
-          {wordsOf(saveFault.value)} <button onClick={() => (saveFault.value = null)}>Dismiss</button>
-        </p>
-      )}
-    </div>
-  );
+/** Closes an open menu at the Escape key, which gives the focus back, and at a press outside. */
+function useClosing(menu: { current: HTMLDetailsElement | null }): void {
+  useEffect(() => {
+    const press = (event: Event) => {
+      if (!menu.current!.contains(event.target as Node)) menu.current!.open = false;
+    };
+    const key = (event: KeyboardEvent) => {
+      if (event.key !== "Escape" || !menu.current!.open) return;
+      menu.current!.open = false;
+      menu.current!.querySelector("summary")!.focus();
+    };
+    addEventListener("pointerdown", press);
+    addEventListener("keydown", key);
+    return () => {
+      removeEventListener("pointerdown", press);
+      removeEventListener("keydown", key);
+    };
+  }, []);
 }

@@ -40,16 +40,16 @@ function Histogram({ summary, quantity, name }: { summary: Summary; quantity: Qu
   const marks = summary.fractions?.map(({ threshold }) => threshold) ?? [];
   return (
     <Chart
-      title={`voxels by ${name}${shadedWords(marks, unit)}`}
+      title={`voxels by ${name}`}
       table={() => binTable(summary, unit)}
       summary={`histogram of ${name} in ${unit}, median ${plain(summary.median, 3)}`}
-      draw={(width) => histogramChart(summary, { quantity, window, label: `${name} in ${unit}`, marks, width })}
+      draw={(width) => histogramChart(summary, { quantity, window, label: labelOf(name, unit, marks), marks, width })}
     />
   );
 }
 
-function shadedWords(marks: number[], unit: string): string {
-  return marks.length === 0 ? "" : `; shaded: ≤ ${marks.join(", ≤ ")} ${unit}`;
+function labelOf(name: string, unit: string, marks: number[]): string {
+  return `${name} in ${unit}${marks.length > 0 ? ` (shaded: ≤ ${marks.join(", ")})` : ""}`;
 }
 
 function binTable({ edges, counts, below, above }: Summary, unit: string): Table {

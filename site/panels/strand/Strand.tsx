@@ -3,7 +3,7 @@
 
 import type { ComponentChildren } from "preact";
 import { acquisition } from "../../store/acquisition";
-import type { StageName, Strand } from "../../store/strand";
+import { isOlder, type StageName, type Strand } from "../../store/strand";
 import { Warnings } from "../acquisition/Acquisition";
 import { Map } from "../map/Map";
 import { Legend } from "../map/Legend";
@@ -57,9 +57,17 @@ function Station({ strand, title, stages, children }: StationProps) {
     <section class="station" aria-label={`${strand.name}: ${title}`}>
       <h3>{title}</h3>
       <Thread strand={strand} stages={stages} />
-      {stages.length > 0 ? <StageWords strand={strand} stages={stages} /> : <p class="words">of the answered voxels</p>}
+      {stages.length > 0 ? <StageWords strand={strand} stages={stages} /> : <DistributionWords strand={strand} />}
       {children}
     </section>
+  );
+}
+
+function DistributionWords({ strand }: { strand: Strand }) {
+  return isOlder(strand, "derive") ? (
+    <p class="words older">older than the settings</p>
+  ) : (
+    <p class="words">of the answered voxels</p>
   );
 }
 

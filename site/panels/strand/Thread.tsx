@@ -2,7 +2,7 @@
 
 import { seconds } from "../../draw/number";
 import { wordsOf } from "../../store/fault";
-import { isOlder, type StageName, type StageState, type Strand } from "../../store/strand";
+import type { StageName, StageState, Strand } from "../../store/strand";
 
 export function Thread({ strand, stages }: { strand: Strand; stages: StageName[] }) {
   return (
@@ -44,7 +44,6 @@ const done: Record<StageName, string> = {
 export function StageWords({ strand, stages }: { strand: Strand; stages: StageName[] }) {
   const current = stages.find((name) => strand.stages[name].value.state !== "done") ?? stages[stages.length - 1];
   const state = strand.stages[current].value;
-  const older = (["reconstruct", "fit", "derive"] as const).some((n) => stages.includes(n) && isOlder(strand, n));
   if (current === "plan" && state.state === "failed") return <p class="words fault">these settings do not hold</p>;
   if (state.state === "failed")
     return (
@@ -52,17 +51,12 @@ export function StageWords({ strand, stages }: { strand: Strand; stages: StageNa
         {wordsOf(state.fault)}
       </p>
     );
-  return (
-    <p class="words">
-      {wordsFor(current, state)}
-      {older && <em class="older"> · shown: older than the settings</em>}
-    </p>
-  );
+  return <p class="words">{wordsFor(current, state)}</p>;
 }
 
 function wordsFor(name: StageName, state: StageState): string {
   if (state.state === "working") return `${working[name]}, ${Math.round(100 * state.fraction)} %`;
   if (state.state !== "done") return "waiting";
   if (name === "plan") return done.plan;
-  return state.reused ? `${done[name]} before` : `${done[name]} in ${seconds(state.seconds)}`;
+  return state.reused ? `${done[name]} earlier` : `${done[name]} in ${seconds(state.seconds)}`;
 }

@@ -1,0 +1,29 @@
+// What opening, saving or loading has to say. It stays in view wherever the page is scrolled.
+
+import { acquisition } from "../../store/acquisition";
+import { wordsOf } from "../../store/fault";
+import { opening, openFault } from "../../store/opening";
+import { saveFault } from "../../store/save";
+
+export function Notices() {
+  return (
+    <div class="notices" role="status">
+      {opening.value && (
+        <p class="notice" data-opening>
+          Opening {opening.value} …
+        </p>
+      )}
+      {openFault.value && (
+        <p class="notice fault" data-fault="open">
+          {wordsOf(openFault.value)} {acquisition.value && <span>The acquisition that was open stays open.</span>}{" "}
+          <button onClick={() => (openFault.value = null)}>Dismiss</button>
+        </p>
+      )}
+      {saveFault.value && (
+        <p class="notice fault" data-fault="save">
+          {wordsOf(saveFault.value)} <button onClick={() => (saveFault.value = null)}>Dismiss</button>
+        </p>
+      )}
+    </div>
+  );
+}
