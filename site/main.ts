@@ -11,7 +11,7 @@
 //   [data-fate]                               legend entry of one fate, by its value
 //   [data-fact]                               name, sequence, delays, shots, ... of the acquisition
 //   [data-setting]                            input of a setting by its path; "calibration" is the switch
-//   [data-action]                             buttons undo, redo, reset of a variant
+//   [data-action]                             buttons undo, redo, reset of a variant; retry at a failed stage
 //   [data-fault]                              text of a fault: open, save, start, recipe, or the path of a setting
 //   [data-made-up], [data-no-calibration], [data-opening], [data-warnings], [data-build]
 //   #open-files-input, #load-recipe-input     file inputs; #use-demo, #save-recipe, #save-maps, #save-pO2, #save-rate,

@@ -78,7 +78,8 @@ export interface HistogramLook {
 /** Draws how many voxels have which value, each bar in the colour that the map gives it. */
 export function histogramChart({ edges, counts }: Summary, look: HistogramLook): ChartElement {
   const bars = counts.map((count, i) => ({ from: edges[i], to: edges[i + 1], count }));
-  const [low, high] = [Math.min(edges[0], ...look.marks, 0), edges[edges.length - 1]];
+  const high = edges[edges.length - 1];
+  const low = look.marks.length > 0 ? Math.min(edges[0], 0) : edges[0];
   const marks = look.marks.filter((mark) => mark <= high);
   return Plot.plot({
     ...frame,

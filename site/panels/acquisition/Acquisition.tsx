@@ -88,7 +88,7 @@ function Curves({ opened }: { opened: Opened }) {
 function ShotPicker({ shots, gradient }: { shots: number; gradient?: number[] }) {
   const pick = (text: string) => {
     const picked = Math.round(Number(text));
-    if (Number.isFinite(picked)) shot.value = Math.min(Math.max(picked, 0), shots - 1);
+    if (text.trim() !== "" && Number.isFinite(picked)) shot.value = Math.min(Math.max(picked, 0), shots - 1);
   };
   return (
     <p class="shot">

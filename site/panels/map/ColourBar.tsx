@@ -92,7 +92,7 @@ function WindowInputs({ quantity, title, window }: { quantity: Quantity; title: 
       <button type="button" disabled={automatic && !wrong} onClick={reset} aria-label={`auto window for ${title}`}>
         auto
       </button>
-      {wrong && <p class="fault">from must be below to</p>}
+      {wrong && <p class="fault">not taken: the first must be below the second</p>}
     </div>
   );
 }

@@ -1,6 +1,6 @@
 // One setting: its label, its input, its unit, and what is wrong with it.
 
-import { useState } from "preact/hooks";
+import { useEffect, useState } from "preact/hooks";
 import { unitText } from "../../draw/number";
 import { setValue } from "../../store/edit";
 import { valueAt } from "../../store/path";
@@ -17,7 +17,7 @@ export function Field({ setting, strand, explain }: Props) {
   const { path, label, unit } = setting;
   const id = `setting-${strand.id}-${path.replaceAll(".", "-")}`;
   const [unreadable, setUnreadable] = useState(false);
-  const fault = unreadable ? `enter a number${unit && ` in ${unitText(unit)}`}` : faultAt(strand, path);
+  const fault = unreadable ? "enter a number" : faultAt(strand, path);
   const help = explanationOf(setting);
   const input = {
     id,
@@ -48,6 +48,8 @@ export function Field({ setting, strand, explain }: Props) {
 
 type InputProps = { setting: Setting; strand: Strand; id: string };
 
+type NumberInputProps = InputProps & { tellUnreadable: (unreadable: boolean) => void };
+
 function ChoiceInput({ setting, strand, ...input }: InputProps) {
   const { path, choices, stage } = setting;
   const value = String(valueAt(strand.recipe.value, path) ?? "");
@@ -63,28 +65,35 @@ function ChoiceInput({ setting, strand, ...input }: InputProps) {
   );
 }
 
-function NumberInput({
-  setting,
-  strand,
-  tellUnreadable,
-  ...input
-}: InputProps & { tellUnreadable: (unreadable: boolean) => void }) {
+interface Draft {
+  text: string;
+  value: unknown;
+}
+
+/** Shows what is being typed as it is typed; a value that comes from elsewhere, as by undo, takes its place. */
+function NumberInput({ setting, strand, tellUnreadable, ...input }: NumberInputProps) {
   const { path, min, max, step, stage } = setting;
+  const [draft, setDraft] = useState<Draft | null>(null);
   const value = valueAt(strand.recipe.value, path);
+  const standing = draft !== null && draft.value === value;
+  useEffect(() => {
+    if (!standing) tellUnreadable(false);
+  }, [standing]);
   const read = (text: string) => {
     const entered = Number(text);
     const readable = text.trim() !== "" && Number.isFinite(entered);
     tellUnreadable(!readable);
+    setDraft({ text, value: readable ? entered : value });
     if (readable) setValue(strand, path, entered, stage as StageName);
   };
+  const limits = min < max ? { min, max } : {};
   return (
     <input
       {...input}
+      {...limits}
       type="number"
-      value={value as number}
+      value={standing ? draft.text : String(value)}
       step={step || "any"}
-      min={min < max ? min : undefined}
-      max={min < max ? max : undefined}
       onInput={(event) => read(event.currentTarget.value)}
     />
   );

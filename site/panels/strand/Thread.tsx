@@ -2,7 +2,9 @@
 
 import { seconds } from "../../draw/number";
 import { wordsOf } from "../../store/fault";
+import { rerun } from "../../store/run";
 import type { StageName, StageState, Strand } from "../../store/strand";
+import type { Fault } from "../../wire.gen";
 
 export function Thread({ strand, stages }: { strand: Strand; stages: StageName[] }) {
   return (
@@ -37,7 +39,7 @@ const done: Record<StageName, string> = {
   measure: "measured",
   reconstruct: "reconstructed",
   fit: "fitted",
-  derive: "made",
+  derive: "derived",
 };
 
 /** Says where the stages of one heading are, a fault word for word. */
@@ -45,13 +47,21 @@ export function StageWords({ strand, stages }: { strand: Strand; stages: StageNa
   const current = stages.find((name) => strand.stages[name].value.state !== "done") ?? stages[stages.length - 1];
   const state = strand.stages[current].value;
   if (current === "plan" && state.state === "failed") return <p class="words fault">these settings do not hold</p>;
-  if (state.state === "failed")
-    return (
-      <p class="words fault" role="status">
-        {wordsOf(state.fault)}
-      </p>
-    );
+  if (state.state === "failed") return <Failure strand={strand} stage={current} fault={state.fault} />;
   return <p class="words">{wordsFor(current, state)}</p>;
+}
+
+function Failure({ strand, stage, fault }: { strand: Strand; stage: StageName; fault: Fault }) {
+  return (
+    <div class="words">
+      <p class="fault" role="status">
+        {wordsOf(fault)}
+      </p>
+      <button type="button" data-action="retry" onClick={() => rerun(strand, stage)}>
+        Try again
+      </button>
+    </div>
+  );
 }
 
 function wordsFor(name: StageName, state: StageState): string {
