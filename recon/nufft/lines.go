@@ -1,0 +1,95 @@
+package nufft
+
+import "torrloom/recon/fft"
+
+// lines is a bundle of lines of one length that are transformed together, [row][line] of complex numbers.
+type lines[F Float] interface {
+	// start empties the bundle and sets the number of lines.
+	start(count int)
+	// add adds pairs to a row, from line at onwards, and remembers whether any was not zero.
+	add(row, at int, pairs []F)
+	// transform replaces every line by Σ_j x_j exp(-i2πjk/length); false when all were zero and stay so.
+	transform() bool
+	// take copies a row, from line at onwards, into pairs, scaled.
+	take(row, at int, pairs []F, scale F)
+}
+
+func newLines[F Float](length, most int) lines[F] {
+	// The lengths are even and smooth or 1: always valid.
+	if _, single := any(F(0)).(float32); single {
+		plan, _ := fft.NewPlan[complex64](length)
+		b := &bundle[float32, complex64]{plan: plan, pack: pack32, unpack: unpack32}
+		b.room(length * most)
+		return any(b).(lines[F])
+	}
+	plan, _ := fft.NewPlan[complex128](length)
+	b := &bundle[float64, complex128]{plan: plan, pack: pack64, unpack: unpack64}
+	b.room(length * most)
+	return any(b).(lines[F])
+}
+
+// bundle is lines of complex numbers C made of pairs of F.
+type bundle[F Float, C fft.Complex] struct {
+	plan          *fft.Plan[C]
+	data, scratch []C
+	count         int
+	filled        bool
+	pack          func(to []C, pairs []F) bool
+	unpack        func(pairs []F, from []C, scale F)
+}
+
+func (b *bundle[F, C]) room(n int) { b.data, b.scratch = make([]C, n), make([]C, n) }
+
+func (b *bundle[F, C]) start(count int) {
+	b.count, b.filled = count, false
+	clear(b.data[:b.plan.Len()*count])
+}
+
+func (b *bundle[F, C]) add(row, at int, pairs []F) {
+	from := row*b.count + at
+	if b.pack(b.data[from:from+len(pairs)/2], pairs) {
+		b.filled = true
+	}
+}
+
+func (b *bundle[F, C]) transform() bool {
+	if b.filled {
+		b.plan.Forward(b.data, b.scratch, b.count)
+	}
+	return b.filled
+}
+
+func (b *bundle[F, C]) take(row, at int, pairs []F, scale F) {
+	from := row*b.count + at
+	b.unpack(pairs, b.data[from:from+len(pairs)/2], scale)
+}
+
+func pack32(to []complex64, pairs []float32) (filled bool) {
+	for i := range to {
+		re, im := pairs[2*i], pairs[2*i+1]
+		filled = filled || re != 0 || im != 0
+		to[i] += complex(re, im)
+	}
+	return filled
+}
+
+func unpack32(pairs []float32, from []complex64, scale float32) {
+	for i, v := range from {
+		pairs[2*i], pairs[2*i+1] = real(v)*scale, imag(v)*scale
+	}
+}
+
+func pack64(to []complex128, pairs []float64) (filled bool) {
+	for i := range to {
+		re, im := pairs[2*i], pairs[2*i+1]
+		filled = filled || re != 0 || im != 0
+		to[i] += complex(re, im)
+	}
+	return filled
+}
+
+func unpack64(pairs []float64, from []complex128, scale float64) {
+	for i, v := range from {
+		pairs[2*i], pairs[2*i+1] = real(v)*scale, imag(v)*scale
+	}
+}
