@@ -2,9 +2,9 @@
 
 import type { Calibration, Recipe } from "../wire.gen";
 import { acquisition } from "./acquisition";
-import { valueAt, withValue } from "./path";
+import { valueAt, withValue, textOf } from "./recipe";
 import { rerun } from "./run";
-import { stageNames, textOf, type StageName, type Strand } from "./strand";
+import { stageNames, type StageName, type Strand } from "./strand";
 
 const pauseMS = 150;
 

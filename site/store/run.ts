@@ -9,7 +9,8 @@ import { engine } from "./engine";
 import { faultOf } from "./fault";
 import { openingSettled } from "./opening";
 import { askPlan, derive, fit, measure, reconstruct, type Tell } from "./stages";
-import { stageNames, textOf, type Images, type Oxygen, type Rates, type StageName, type Strand } from "./strand";
+import { textOf } from "./recipe";
+import { stageNames, type Images, type Oxygen, type Rates, type StageName, type Strand } from "./strand";
 
 const mebi = 2 ** 20;
 

@@ -7,7 +7,8 @@ import { acquisition } from "./acquisition";
 import { setRecipe } from "./edit";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
-import { isOlder, textOf, type Oxygen, type Rates, type Strand } from "./strand";
+import { textOf } from "./recipe";
+import { isOlder, type Oxygen, type Rates, type Strand } from "./strand";
 import { delay } from "./view";
 
 export type MapName = "pO2" | "rate" | "amplitude" | "mask";

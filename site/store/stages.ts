@@ -8,7 +8,7 @@ import { inTurns } from "./turns";
 
 export type Tell = (fraction: number) => void;
 
-export function gridOf(plan: Plan): Grid {
+function gridOf(plan: Plan): Grid {
   return { n: [...plan.n], voxelMM: [...plan.voxelMM], originMM: [...plan.originMM] } as Grid;
 }
 

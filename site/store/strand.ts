@@ -6,7 +6,7 @@ import type { Grid } from "../draw/grid";
 import type { Fault, Plan, Recipe, Requests } from "../wire.gen";
 import { hello } from "./engine";
 import { History } from "./history";
-import { valueAt } from "./path";
+import { valueAt } from "./recipe";
 
 export const stageNames = ["plan", "measure", "reconstruct", "fit", "derive"] as const;
 
@@ -110,12 +110,4 @@ function unplannedStages({ recipe, planned }: Strand): StageName[] {
 /** Tells whether a change at one stage alters the result of another. */
 function reaches(changed: StageName, stage: StageName): boolean {
   return stageNames.indexOf(changed) <= stageNames.indexOf(stage);
-}
-
-/**
- * Returns the recipe as JSON text, the form in which it is checked and saved. A calibration that is not there is said
- * in so many words, because what a text leaves out is taken from the defaults of the data.
- */
-export function textOf(recipe: Recipe, indent = 0): string {
-  return JSON.stringify({ ...recipe, calibration: recipe.calibration ?? null }, null, indent);
 }

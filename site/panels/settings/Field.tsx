@@ -3,7 +3,7 @@
 import { useEffect, useState } from "preact/hooks";
 import { unitText } from "../../draw/number";
 import { setValue } from "../../store/edit";
-import { valueAt } from "../../store/path";
+import { valueAt } from "../../store/recipe";
 import type { StageName, Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
 

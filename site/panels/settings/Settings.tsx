@@ -5,7 +5,8 @@ import { useState } from "preact/hooks";
 import { redo, resetToDefaults, setCalibrated, undo } from "../../store/edit";
 import { hello } from "../../store/engine";
 import { wordsOf } from "../../store/fault";
-import { textOf, type Strand } from "../../store/strand";
+import { textOf } from "../../store/recipe";
+import { type Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
 import { Field, faultAt } from "./Field";
 

@@ -1,4 +1,4 @@
-// Leaves of a recipe by path, as the catalogue names them: "reconstruction.window".
+// A recipe as text, and its leaves by path, as the catalogue names them: "reconstruction.window".
 
 import type { Recipe } from "../wire.gen";
 
@@ -16,4 +16,12 @@ export function withValue(recipe: Recipe, path: string, value: unknown): Recipe 
 
 function changed(tree: Tree, [key, ...rest]: string[], value: unknown): Tree {
   return { ...tree, [key]: rest.length === 0 ? value : changed((tree[key] ?? {}) as Tree, rest, value) };
+}
+
+/**
+ * Returns the recipe as JSON text, the form in which it is checked and saved. A calibration that is not there is said
+ * in so many words, because what a text leaves out is taken from the defaults of the data.
+ */
+export function textOf(recipe: Recipe, indent = 0): string {
+  return JSON.stringify({ ...recipe, calibration: recipe.calibration ?? null }, null, indent);
 }
