@@ -6,7 +6,7 @@ import { redo, resetToDefaults, setCalibrated, undo } from "../../store/edit";
 import { hello } from "../../store/engine";
 import { wordsOf } from "../../store/fault";
 import { textOf } from "../../store/recipe";
-import { type Strand } from "../../store/strand";
+import type { Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
 import { Field, faultAt } from "./Field";
 
