@@ -16,7 +16,7 @@
 //   [data-made-up], [data-no-calibration], [data-opening], [data-warnings], [data-build]
 //   #open-files-input, #load-recipe-input     file inputs; #use-demo, #save-recipe, #save-maps, #save-pO2, #save-rate,
 //                                             #save-amplitude, #save-mask, #save-all; #theme
-//   #readout, #slice, #delay, #shot, input[name=plane], #window-pO2-low, ...  shared view
+//   #readout, #slice, #delay, #shot, input[name=plane], #window-0-pO2-low, ...  shared view
 
 import { effect } from "@preact/signals";
 import { h, render } from "preact";

@@ -10,23 +10,25 @@ import { delay, oneWindowForDelays, setWindows, windowOf } from "../../store/vie
 import { amplitudeUnit } from "../view/readout";
 
 interface Props {
+  /** Sets the ids of this bar apart from those of every other. */
+  id: string;
   quantity: Quantity;
   title: string;
   tally: Painted | null;
 }
 
-export function ColourBar({ quantity, title, tally }: Props) {
+export function ColourBar({ id, quantity, title, tally }: Props) {
   const window = windowOf(quantity);
   return (
     <div class="bar">
       <Colours quantity={quantity} />
       <Ticks window={window} />
       <p class="bar-title">{barTitle(quantity, title)}</p>
-      <WindowInputs quantity={quantity} title={title} window={window} />
+      <WindowInputs id={id} quantity={quantity} title={title} window={window} />
       <p class="clipped" data-clipped={quantity}>
         {tally ? clippedWords(tally) : ""}
       </p>
-      {quantity === "amplitude" && <DelaySwitch />}
+      {quantity === "amplitude" && <DelaySwitch id={id} />}
     </div>
   );
 }
@@ -61,7 +63,17 @@ function Ticks({ window }: { window: Window }) {
   );
 }
 
-function WindowInputs({ quantity, title, window }: { quantity: Quantity; title: string; window: Window }) {
+function WindowInputs({
+  id,
+  quantity,
+  title,
+  window,
+}: {
+  id: string;
+  quantity: Quantity;
+  title: string;
+  window: Window;
+}) {
   const automatic = setWindows[quantity].value === null;
   const [wrong, setWrong] = useState(false);
   const enter = (end: "low" | "high", text: string) => {
@@ -78,14 +90,14 @@ function WindowInputs({ quantity, title, window }: { quantity: Quantity; title: 
     <div class="window" role="group" aria-label={`window of the ${title} map`}>
       <WindowEnd
         name={`${title} window from`}
-        id={`window-${quantity}-low`}
+        id={`window-${id}-low`}
         value={window.low}
         enter={(text) => enter("low", text)}
       />
       <span>to</span>
       <WindowEnd
         name={`${title} window to`}
-        id={`window-${quantity}-high`}
+        id={`window-${id}-high`}
         value={window.high}
         enter={(text) => enter("high", text)}
       />
@@ -117,11 +129,11 @@ function WindowEnd({ name, id, value, enter }: EndProps) {
   );
 }
 
-function DelaySwitch() {
+function DelaySwitch({ id }: { id: string }) {
   return (
     <label class="switch">
       <input
-        id="one-window"
+        id={`window-${id}-delays`}
         type="checkbox"
         checked={oneWindowForDelays.value}
         onChange={(event) => (oneWindowForDelays.value = event.currentTarget.checked)}

@@ -29,11 +29,11 @@ export function Map({ strand, quantity, title }: Props) {
   return (
     <figure class="map" data-map={quantity} data-older={older || undefined}>
       {older && <p class="older">older than the settings</p>}
-      <Canvas scene={scene} label={`${title} map`} tell={setTally} />
+      <Canvas scene={scene} hint={`map-keys-${strand.id}`} label={`${title} map`} tell={setTally} />
       <p class="at-cursor">
         at the cursor <b data-value={quantity}>{valueAt(strand, quantity)}</b>
       </p>
-      <ColourBar quantity={quantity} title={title} tally={scene ? tally : null} />
+      <ColourBar id={`${strand.id}-${quantity}`} quantity={quantity} title={title} tally={scene ? tally : null} />
     </figure>
   );
 }
@@ -72,7 +72,14 @@ function valuesOf(strand: Strand, quantity: Quantity): { grid: Grid; values: Flo
   return images && values ? { grid: images.grid, values } : null;
 }
 
-function Canvas({ scene, label, tell }: { scene: Scene | null; label: string; tell: (painted: Painted) => void }) {
+interface CanvasProps {
+  scene: Scene | null;
+  label: string;
+  hint: string;
+  tell: (painted: Painted) => void;
+}
+
+function Canvas({ scene, label, hint, tell }: CanvasProps) {
   const canvas = useRef<HTMLCanvasElement>(null);
   const width = useWidth(canvas);
   useEffect(
@@ -92,7 +99,7 @@ function Canvas({ scene, label, tell }: { scene: Scene | null; label: string; te
       tabIndex={0}
       role="application"
       aria-label={label}
-      aria-describedby="map-keys"
+      aria-describedby={hint}
       data-drawn={scene ? "" : undefined}
       onPointerDown={(event) => {
         event.currentTarget.setPointerCapture(event.pointerId);

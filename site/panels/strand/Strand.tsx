@@ -34,7 +34,7 @@ export function StrandPanel({ strand }: { strand: Strand }) {
         </Station>
         <div class="below-maps">
           <Legend strand={strand} />
-          <p class="hint" id="map-keys">
+          <p class="hint" id={`map-keys-${strand.id}`}>
             Keys on a map: arrows move the cursor, Page Up and Page Down (or . and ,) change the slice, [ and ] the
             delay, Home goes to the gradient centre.
           </p>
