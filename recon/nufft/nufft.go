@@ -124,6 +124,9 @@ func (p *Plan[F]) Voxels() int { return p.axes[0].n * p.axes[1].n * p.axes[2].n 
 // Cells returns the number of cells of a grid: a grid of some lanes holds twice as many numbers per lane.
 func (p *Plan[F]) Cells() int { return p.rowCells() * p.axes[1].length * p.axes[2].length }
 
+// Touched returns the number of cells that one point is spread over.
+func (p *Plan[F]) Touched() int { return p.axes[0].width() * p.axes[1].width() * p.axes[2].width() }
+
 // rowCells returns the cells stored per row along x: the period and, beyond it, room for points near its end.
 func (p *Plan[F]) rowCells() int { return p.axes[0].length + p.axes[0].width() }
 

@@ -77,7 +77,7 @@ func (g *Grid[F]) shrink(along, other int) {
 	g.eachBlock(func(from, to int) {
 		bundle.start((to - from) / 2)
 		for cell := range a.length {
-			bundle.add(cell, 0, g.cellsAt(along, cell, other, from, to))
+			bundle.put(cell, 0, g.cellsAt(along, cell, other, from, to))
 		}
 		filled := bundle.transform()
 		for i := range a.n {
@@ -101,7 +101,7 @@ func (g *Grid[F]) grow(along, other int) {
 			for j := range in {
 				in[j] *= F(a.correction[i])
 			}
-			bundle.add(a.output(i), 0, in)
+			bundle.put(a.output(i), 0, in)
 		}
 		bundle.transform()
 		for cell := range a.length {
@@ -172,7 +172,7 @@ func (g *Grid[F]) growRows(image []F, iz, fromY, toY int, x *axis) {
 			for l, v := range row[ix*pairs : (ix+1)*pairs] {
 				scaled[l] = v * F(x.correction[ix])
 			}
-			bundle.add(x.output(ix), (iy-fromY)*g.lanes, scaled)
+			bundle.put(x.output(ix), (iy-fromY)*g.lanes, scaled)
 		}
 	}
 	bundle.transform()
