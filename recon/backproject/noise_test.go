@@ -18,7 +18,7 @@ func TestPredictedNoiseEqualsMonteCarlo(t *testing.T) {
 		zero                       float64
 		window                     string
 	}{
-		{2, 300, 32, 12, 149.6, "none"}, {2, 300, 32, 12, 149.6, "hann"}, {2, 160, 32, 12, 9.6, "hamming"}, {3, 300, 16, 6, 149.6, "hann"},
+		{2, 300, 32, 40, 149.6, "none"}, {2, 300, 32, 40, 149.6, "hann"}, {2, 160, 32, 40, 9.6, "hamming"}, {3, 300, 16, 20, 149.6, "hann"},
 	} {
 		directions := phantom.EqualAngles(60)
 		if c.dim == 3 {
@@ -40,7 +40,7 @@ func TestPredictedNoiseEqualsMonteCarlo(t *testing.T) {
 			}
 		}
 		got := math.Sqrt(square / float64(count))
-		if !(math.Abs(got/predicted-1) <= 0.05) { // the agreed 5 %
+		if !(math.Abs(got/predicted-1) <= 0.03) { // measured 0.4 %; the spread itself is known to 1 %
 			t.Errorf("%+v: predicted %.4g, spread %.4g over %d voxels", c, predicted, got, count)
 		}
 	}
@@ -86,7 +86,7 @@ func TestNoiseVarianceIsTheKnownOne(t *testing.T) {
 			directions = phantom.GoldenHalfSphere(90)
 			want = math.Pi * math.Pi * sigma * sigma / (20 * 90 * math.Pow(tau, 4))
 		}
-		sp := &condition.Spokes{Dim: dim, Directions: directions, DeltaK: 1 / (2 * n * tau), Half: n, Delays: []int{0},
+		sp := &condition.Spokes{Dim: dim, Directions: directions, DeltaK: 1 / (2 * n * tau), Half: n, Delays: []int{0}, Shot: make([]int, 90),
 			NoiseDensity: []float64{sigma * sigma * tau}, OneSided: make([]int, 90)}
 		for i := range sp.OneSided {
 			sp.OneSided[i] = n + 1

@@ -68,7 +68,7 @@ func TestSameSinogramThroughScikitImage(t *testing.T) {
 		t.Fatal(err)
 	}
 	theirs := iradon(t, sinogram, degrees)
-	g, ours := reconstructSampled(t, a, n, 2, "none", 1)
+	g, ours := reconstructSampled(t, a, n, 2, "none", fineness{transformed: 1, between: 1024})
 	sum, norm, count := 0.0, 0.0, 0
 	for iy := range n {
 		for ix := range n {
@@ -87,7 +87,7 @@ func TestSameSinogramThroughScikitImage(t *testing.T) {
 	}
 	relative := math.Sqrt(sum / norm)
 	t.Logf("relative difference %.2g", relative)
-	if !(relative <= 1e-5) || count < 6000 { // float32 rounding of 120 sums; measured 2e-7
+	if !(relative <= 3e-4) || count < 6000 { // the nearest of 1024 entries; measured 7e-5
 		t.Errorf("relative difference %.4f over %d pixels", relative, count)
 	}
 }

@@ -18,6 +18,7 @@ import (
 // Source: the estimate is Wiener's (Extrapolation, Interpolation, and Smoothing of Stationary Time Series, 1949) for a
 // flat band.
 type Resampler struct {
+	samples int
 	first   []int       // [output] index of the first input used
 	weights [][]float64 // [output][input - first]; nil where the output lies outside the trace
 }
@@ -41,7 +42,7 @@ type place = float64
 //
 // Errors: bug when the system cannot be solved, which beta in range excludes.
 func NewResampler(samples int, beta float64, at []place) (*Resampler, error) {
-	r := &Resampler{first: make([]int, len(at)), weights: make([][]float64, len(at))}
+	r := &Resampler{samples: samples, first: make([]int, len(at)), weights: make([][]float64, len(at))}
 	half := int(math.Ceil(reach/beta)) + extraReach
 	solvers := map[int]*mat.Cholesky{}
 	for i, u := range at {

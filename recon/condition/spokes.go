@@ -29,6 +29,9 @@ type Spokes struct {
 	// OneSided is, per shot, the first m for which only one half of the echo was recorded; Half+1 if none. There the
 	// variance counts twice.
 	OneSided []int
+
+	rawSD []float64    // [delay] SD of one channel of one raw sample
+	from  []*Resampler // [shot] how samples came out of a trace; nil for projections
 }
 
 // Geometry says which band and which part of k-space are needed.
@@ -64,6 +67,7 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 	sp := newSpokes(a, g, delays)
 	for _, d := range delays {
 		sp.NoiseDensity = append(sp.NoiseDensity, noiseDensity(a, c, d))
+		sp.rawSD = append(sp.rawSD, c.NoiseSD[d])
 	}
 	reader := newReader(a, s, c, sp)
 	for i := range sp.Shot {
@@ -78,6 +82,7 @@ func newSpokes(a *acquisition.Acquisition, g Geometry, delays []int) *Spokes {
 	sp := &Spokes{Dim: a.Dim, DeltaK: 1 / (2 * g.BandMM), Half: g.half(), BandMM: g.BandMM, Delays: delays, Shot: a.ImageShots()}
 	sp.Samples = make([]complex64, len(sp.Shot)*(sp.Half+1)*len(delays))
 	sp.OneSided = make([]int, len(sp.Shot))
+	sp.from = make([]*Resampler, len(sp.Shot))
 	for _, s := range sp.Shot {
 		n, strength := a.GradientMTPerM[s], a.Strength(s)
 		sp.Directions = append(sp.Directions, [3]float64{n[0] / strength, n[1] / strength, n[2] / strength})
@@ -169,7 +174,7 @@ func (r *reader) fill(i int) error {
 	if err != nil {
 		return err
 	}
-	r.sp.OneSided[i] = r.sp.Half + 1
+	r.sp.OneSided[i], r.sp.from[i] = r.sp.Half+1, resampler
 	for d := range r.sp.Delays {
 		r.loadTrace(i, d)
 		for m := range r.sp.Half + 1 {
@@ -241,33 +246,4 @@ func (r *reader) fillFromProjection(i int) {
 			r.sp.Row(i, m)[d] = complex64(sum)
 		}
 	}
-}
-
-// NoiseSD returns the predicted SD of noise, per delay, in an image that is linear in the spokes:
-//
-//	Σ_shots axis Σ_m filter_|m| S(m·DeltaK) exp(i2π m·DeltaK n·r)·DeltaK
-//
-// for axis weights per shot and a filter per m. Exact for white noise, up to what an interpolation smooths away.
-func (sp *Spokes) NoiseSD(axis, filter []float64) []float64 {
-	sum := 0.0
-	for i, w := range axis {
-		square := filter[0] * filter[0]
-		for m := 1; m <= sp.Half; m++ {
-			square += float64(2*halves(m, sp.OneSided[i])) * filter[m] * filter[m]
-		}
-		sum += w * w * square * sp.DeltaK
-	}
-	out := make([]float64, len(sp.Delays))
-	for d, density := range sp.NoiseDensity {
-		out[d] = math.Sqrt(density * sum)
-	}
-	return out
-}
-
-// halves returns by how much the noise variance counts: 2 where a single half stands for both.
-func halves(m, oneSided int) int {
-	if m >= oneSided {
-		return 2
-	}
-	return 1
 }
