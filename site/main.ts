@@ -39,6 +39,8 @@ async function begin(): Promise<void> {
   const place = document.getElementById("page")!;
   place.replaceChildren();
   render(h(Page, null), place);
+  // The page is seen before the engine's program is unpacked.
+  await new Promise((go) => setTimeout(go));
   if (!(await start())) return;
   followTraces();
   await openDemo();

@@ -7,11 +7,16 @@ import { verdigris } from "./verdigris";
 
 export const colourMaps: ColourMap[] = [graphite, verdigris, garnet];
 
-const tables = new Map(colourMaps.map((map) => [map.quantity, tableOf(map)]));
+const tables = new Map<Quantity, Uint32Array>();
 
 /** Returns the colour table that a quantity is drawn with. */
 export function tableFor(quantity: Quantity): Uint32Array {
-  return tables.get(quantity)!;
+  let table = tables.get(quantity);
+  if (!table) {
+    table = tableOf(colourMaps.find((map) => map.quantity === quantity)!);
+    tables.set(quantity, table);
+  }
+  return table;
 }
 
 export { tableSize, type ColourMap, type Quantity } from "./map";

@@ -20,22 +20,27 @@ export interface ColourMap {
 /** Entries of a colour table: fine enough that no step is seen. */
 export const tableSize = 1024;
 
-const fineness = 8;
+/** Points at which the path through OKLab is measured; between them it is taken as straight. */
+const pathPoints = 256;
 
 /**
  * Returns the table of a map as packed pixels (red in the lowest byte, opaque). Entries are spaced evenly along the
  * path through OKLab, so that equal differences of the value look equally large.
  */
 export function tableOf(map: ColourMap): Uint32Array {
-  const path = pathOf(map.stops, tableSize * fineness);
+  const path = pathOf(map.stops, pathPoints);
   const run = lengthsAlong(path);
   const table = new Uint32Array(tableSize);
   for (let i = 0, at = 0; i < tableSize; i++) {
-    const wanted = (run[run.length - 1] * i) / (tableSize - 1);
-    while (at < run.length - 1 && run[at] < wanted) at++;
-    table[i] = packed(path[at]);
+    const wanted = (run[pathPoints - 1] * i) / (tableSize - 1);
+    while (at < pathPoints - 2 && run[at + 1] < wanted) at++;
+    table[i] = packed(mixed(path[at], path[at + 1], (wanted - run[at]) / (run[at + 1] - run[at])));
   }
   return table;
+}
+
+function mixed(from: Lab, to: Lab, share: number): Lab {
+  return [0, 1, 2].map((c) => from[c] + (to[c] - from[c]) * share) as Lab;
 }
 
 function packed(lab: Lab): number {

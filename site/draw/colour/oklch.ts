@@ -27,10 +27,19 @@ export function bytesOf(lab: Lab): Rgb {
   return linearOf(showable(lab)).map(encode) as Rgb;
 }
 
-function showable([lightness, a, b]: Lab): Lab {
-  let keep = 1;
-  while (keep > 0 && !fits(linearOf([lightness, a * keep, b * keep]))) keep -= 0.01;
-  return [lightness, a * Math.max(keep, 0), b * Math.max(keep, 0)];
+function showable(lab: Lab): Lab {
+  if (fits(linearOf(lab))) return lab;
+  let [shown, lost] = [0, 1];
+  for (let halving = 0; halving < 10; halving++) {
+    const middle = (shown + lost) / 2;
+    if (fits(linearOf(withChroma(lab, middle)))) shown = middle;
+    else lost = middle;
+  }
+  return withChroma(lab, shown);
+}
+
+function withChroma([lightness, a, b]: Lab, share: number): Lab {
+  return [lightness, a * share, b * share];
 }
 
 function fits(linear: Rgb): boolean {
