@@ -6,6 +6,17 @@ export interface Calibration {
   rate: string;
   zeroPerUS: number;
   slopePerUSPerTorr: number;
+  zeroSEPerUS?: number;
+  slopeSEPerUSPerTorr?: number;
+  correlation?: number;
+  concentrationPerUSPerUM?: number;
+  concentrationSEPerUSPerUM?: number;
+  concentrationUM?: number;
+  temperaturePerUSPerC?: number;
+  temperatureSEPerUSPerC?: number;
+  temperatureC?: number;
+  fromTorr?: number;
+  toTorr?: number;
 }
 
 export interface Choice {

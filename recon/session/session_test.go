@@ -91,6 +91,10 @@ func TestASettingChangesTheKeysFromItsStageOn(t *testing.T) {
 		"conditioning.offset": `"none"`, "conditioning.phase": `"none"`, "conditioning.timeShiftSamples": `0.5`,
 		"reconstruction.matrix": `72`, "reconstruction.fieldOfViewMM": `25.5`, "reconstruction.window": `"none"`, "reconstruction.cutoff": `0.7`,
 		"rates.minPerUS": `0.01`, "rates.maxPerUS": `3`, "calibration.zeroPerUS": `0.21`, "calibration.slopePerUSPerTorr": `0.006`,
+		"calibration.zeroSEPerUS": `0.001`, "calibration.slopeSEPerUSPerTorr": `0.0001`, "calibration.correlation": `-0.5`,
+		"calibration.concentrationPerUSPerUM": `0.0007`, "calibration.concentrationSEPerUSPerUM": `0.0001`, "calibration.concentrationUM": `250`,
+		"calibration.temperaturePerUSPerC": `0.002`, "calibration.temperatureSEPerUSPerC": `0.001`, "calibration.temperatureC": `37`,
+		"calibration.fromTorr": `1`, "calibration.toTorr": `120`,
 		"mask.amplitudeFraction": `0.33`,
 	}
 	stages := []string{"measure", "reconstruct", "fit", "derive"}
