@@ -30,7 +30,7 @@ var steps = []step{
 	{"tests", goCommand(nil, "test", "./recon/...", "./wasm/...", "./build/...")},
 	{"tests as wasm", testAsWasm},
 	{"page twice the same", checkPageRepeats},
-	{"page in a browser", goCommand(nil, "test", "./site/e2e")},
+	{"page in a browser", goCommand(nil, "test", "-timeout", "5m", "./site/e2e")},
 }
 
 // runCheck runs every step, also after a failure, and ends with a table of what passed.

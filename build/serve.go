@@ -4,8 +4,10 @@ import (
 	"errors"
 	"flag"
 	"fmt"
+	"io"
 	"net"
 	"net/http"
+	"os"
 	"strconv"
 	"syscall"
 )
@@ -20,8 +22,15 @@ const (
 func runServe(root string, arguments []string) error {
 	flags := flag.NewFlagSet("serve", flag.ContinueOnError)
 	port := flags.Int("port", usualPort, "port to serve at; the next free one is taken; 0 for any")
+	withParent := flags.Bool("with-parent", false, "end when the standard input is closed, as it is when the parent ends")
 	if err := flags.Parse(arguments); err != nil {
 		return err
+	}
+	if *withParent {
+		go func() {
+			io.Copy(io.Discard, os.Stdin)
+			os.Exit(0)
+		}()
 	}
 	p, err := makePage(root)
 	if err != nil {

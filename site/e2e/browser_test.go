@@ -268,8 +268,11 @@ func (p *page) workers() []target.ID {
 	return ids
 }
 
+// hearWorker gives up after a while, because a worker that is being stopped may never answer.
 func (p *page) hearWorker(id target.ID) error {
-	ctx, cancel := chromedp.NewContext(p.ctx, chromedp.WithTargetID(id), chromedp.WithListener(p.hear))
+	limited, cancel := context.WithTimeout(p.ctx, patience/3)
+	p.t.Cleanup(cancel)
+	ctx, cancel := chromedp.NewContext(limited, chromedp.WithTargetID(id), chromedp.WithListener(p.hear))
 	p.t.Cleanup(cancel)
 	_, err := chromedp.Run(ctx, chromedp.Evaluate[int]("1"))
 	return err

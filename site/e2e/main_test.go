@@ -51,8 +51,11 @@ func startServer(folder string) (*exec.Cmd, string, error) {
 	if text, err := compile.CombinedOutput(); err != nil {
 		return nil, "", fmt.Errorf("compile the build program: %w\n%s", err, text)
 	}
-	server := exec.Command(program, "serve", "-port", "0")
+	server := exec.Command(program, "serve", "-port", "0", "-with-parent")
 	server.Stderr = os.Stderr
+	if _, err := server.StdinPipe(); err != nil { // closed when this program ends, however it ends
+		return nil, "", err
+	}
 	out, err := server.StdoutPipe()
 	if err != nil {
 		return nil, "", err

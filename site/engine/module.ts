@@ -13,12 +13,18 @@ export async function compileModule(id: string): Promise<WebAssembly.Module> {
 function piecesOf(text: string): ReadableStream<Uint8Array<ArrayBuffer>> {
   let at = 0;
   return new ReadableStream({
-    pull(controller) {
+    async pull(controller) {
       if (at >= text.length) return controller.close();
+      await otherWork();
       controller.enqueue(decode(text.slice(at, at + pieceLength)));
       at += pieceLength;
     },
   });
+}
+
+/** Lets the page draw and answer between two pieces. */
+function otherWork(): Promise<void> {
+  return new Promise((resolve) => setTimeout(resolve));
 }
 
 function decode(piece: string): Uint8Array<ArrayBuffer> {

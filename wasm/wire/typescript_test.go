@@ -68,14 +68,3 @@ func TestTypesThatCannotTravelAreRefused(t *testing.T) {
 		})
 	}
 }
-
-func TestEveryExchangeHasItsHandler(t *testing.T) {
-	if len(handlers) != len(Exchanges) {
-		t.Errorf("%d handlers for %d exchanges", len(handlers), len(Exchanges))
-	}
-	for _, x := range Exchanges {
-		if handlers[x.Kind] == nil {
-			t.Errorf("nothing answers %q", x.Kind)
-		}
-	}
-}
