@@ -26,7 +26,7 @@ type Settings struct {
 	Oversampling float64 // grid cells per voxel and axis, 1.25 to 2
 }
 
-// Defaults returns width 4 and oversampling 1.5: an error of some 1e-4 for an object that keeps away from the rim of
+// Defaults returns width 4 and oversampling 1.5: an error of 2e-4 for an object that keeps away from the rim of
 // the field of view, below that of any measured data.
 func Defaults() Settings { return Settings{Width: 4, Oversampling: 1.5} }
 
