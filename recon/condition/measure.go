@@ -18,7 +18,11 @@ type Constants struct {
 	PhaseRad               float64   // signal is turned by -PhaseRad
 	NoiseSD                []float64 // [delay] SD of one channel of one raw sample
 	ExtentMM               float64   // diameter, around the gradient centre, of the smallest ball that holds the object
-	EchoHeight             []float64 // [delay] mean over the image shots of the phased signal at k = 0
+	EchoHeight             []float64 // [delay] mean over the kept shots of the phased signal at k = 0
+
+	// Own phase and shift of time zero of every shot of the acquisition, where asked for; else absent.
+	ShotPhaseRad     []float64 `json:",omitempty"`
+	ShotShiftSamples []float64 `json:",omitempty"`
 }
 
 // Measure returns the constants of an acquisition and warnings about them.
@@ -30,8 +34,8 @@ func Measure(a *acquisition.Acquisition, s Settings) (*Constants, []string, erro
 	}
 	warnings := halfEchoWarning(a, s)
 	c := &Constants{}
-	spectra := newSpectra(a)
-	c.ExtentMM = spectra.extent(a.ReferenceDelay())
+	spectra := newSpectra(a, s)
+	c.ExtentMM = spectra.extent(s.ReferenceDelay(a))
 	for d := range a.Delays {
 		c.NoiseSD = append(c.NoiseSD, spectra.noise(d, c.ExtentMM))
 	}
@@ -44,9 +48,12 @@ func Measure(a *acquisition.Acquisition, s Settings) (*Constants, []string, erro
 	if s.Offset == "baseline-shots" && len(a.BaselineShots()) == 0 {
 		return nil, nil, fault.New(fault.BadSetting, "recipe conditioning.offset", "off-resonance shots asked for, but the file has none (shot_role 2); use trace-ends or none")
 	}
+	if s.ShotPhase == "own" || s.ShotTime == "own" {
+		ownShots(a, s, c)
+	}
 	heights := echoHeights(a, s, c)
 	if s.Phase == "reference-delay" && a.Domain == acquisition.Time {
-		c.PhaseRad = cmplx.Phase(heights[a.ReferenceDelay()])
+		c.PhaseRad = cmplx.Phase(heights[s.ReferenceDelay(a)])
 	}
 	for _, h := range heights {
 		c.EchoHeight = append(c.EchoHeight, real(h*cmplx.Rect(1, -c.PhaseRad)))
@@ -75,6 +82,9 @@ func checkUsable(a *acquisition.Acquisition, s Settings) error {
 	if a.Encoding != acquisition.Spoke {
 		return fault.New(fault.Unsupported, "encoding", "%s data need single-point reconstruction, which this version does not have; spokes are read", a.Encoding)
 	}
+	if len(s.KeptShots(a)) == 0 || len(s.KeptDelays(a)) == 0 {
+		return fault.New(fault.BadSetting, "recipe conditioning", "every image shot or every delay is excluded; keep at least one of each")
+	}
 	zero := a.TimeZeroSample + s.TimeShiftSamples
 	if a.Domain == acquisition.Time && (zero < 0 || zero > float64(a.Samples-1)) {
 		return fault.New(fault.Unsupported, "time_zero_sample", "k = 0 lies at sample %g, outside the %d recorded ones; spokes must contain it", zero, a.Samples)
@@ -82,22 +92,40 @@ func checkUsable(a *acquisition.Acquisition, s Settings) error {
 	return nil
 }
 
-// echoHeights returns the mean over the image shots of the offset-free signal at k = 0, per delay.
+// echoHeights returns the mean over the kept shots of the corrected signal at k = 0, per delay.
 func echoHeights(a *acquisition.Acquisition, s Settings, c *Constants) []complex128 {
-	shots := a.ImageShots()
+	shots, all := s.KeptShots(a), make([]int, a.Delays)
+	for d := range all {
+		all[d] = d
+	}
+	corrector, trace := NewCorrector(a, s, c, all), make([]complex64, a.Samples)
 	out := make([]complex128, a.Delays)
 	for d := range out {
 		for _, shot := range shots {
-			out[d] += atTimeZero(a, s, a.Trace(d, shot)) - complex(c.OffsetReal, c.OffsetImag)
+			corrector.Load(trace, d, shot)
+			out[d] += heightOf(a, s, c, corrector.ZeroSample(shot), trace)
 		}
 		out[d] /= complex(float64(len(shots)), 0)
 	}
 	return out
 }
 
+// heightOf returns the corrected signal at k = 0, looking across the dead time where there is one.
+func heightOf(a *acquisition.Acquisition, s Settings, c *Constants, zero float64, trace []complex64) complex128 {
+	if s.DeadSamples > 0 && a.Domain == acquisition.Time {
+		beta := math.Min(1, 1.15*c.ExtentMM/a.AliasFreeMM())
+		if rs, err := newResampler(a.Samples, firstUsable(s.DeadSamples, zero), beta, []place{zero}); err == nil {
+			if v, ok := rs.Apply(0, trace); ok {
+				return v
+			}
+		}
+	}
+	return atTimeZero(a, zero, trace)
+}
+
 // atTimeZero returns the signal at k = 0: between its two neighbours in a trace, the integral of a projection. It serves
 // phase and display, not the image, so that the straight line between neighbours is good enough.
-func atTimeZero(a *acquisition.Acquisition, s Settings, trace []complex64) complex128 {
+func atTimeZero(a *acquisition.Acquisition, zero float64, trace []complex64) complex128 {
 	if a.Domain == acquisition.Projection {
 		var sum complex128
 		for _, v := range trace {
@@ -105,8 +133,7 @@ func atTimeZero(a *acquisition.Acquisition, s Settings, trace []complex64) compl
 		}
 		return sum * complex(a.PositionStepMM, 0)
 	}
-	zero := a.TimeZeroSample + s.TimeShiftSamples
-	j := min(int(zero), len(trace)-1)
+	j := max(0, min(int(zero), len(trace)-1))
 	next := min(j+1, len(trace)-1)
 	f := complex(zero-float64(j), 0)
 	return complex128(trace[j])*(1-f) + complex128(trace[next])*f
@@ -121,21 +148,21 @@ const standsOut = 5
 // line over the delays through (echo height, mean of the ends) has the receiver's offset as its intercept. Fewer than
 // three delays cannot tell the two apart.
 func offsetFromEnds(a *acquisition.Acquisition, s Settings, noiseSD []float64) (complex128, bool) {
-	if a.Delays < 3 {
+	delays := s.KeptDelays(a)
+	if len(delays) < 3 {
 		return 0, false
 	}
-	ends := endSamples(a, s)
-	heights := echoHeights(a, s, &Constants{})
-	means := make([]complex128, a.Delays)
-	shots := a.ImageShots()
-	for d := range means {
+	ends, shots, zero := endSamples(a, s), s.KeptShots(a), a.TimeZeroSample+s.TimeShiftSamples
+	heights, means := make([]complex128, len(delays)), make([]complex128, len(delays))
+	for i, d := range delays {
 		for _, shot := range shots {
 			trace := a.Trace(d, shot)
+			heights[i] += atTimeZero(a, zero, trace) / complex(float64(len(shots)), 0)
 			for _, j := range ends {
-				means[d] += complex128(trace[j])
+				means[i] += complex128(trace[j])
 			}
 		}
-		means[d] /= complex(float64(len(ends)*len(shots)), 0)
+		means[i] /= complex(float64(len(ends)*len(shots)), 0)
 	}
 	offset, leverage, misfit := intercept(heights, means)
 	se := slices.Max(noiseSD) / math.Sqrt(float64(len(ends)*len(shots)))
@@ -190,9 +217,9 @@ type spectra struct {
 // mostShots bounds the shots looked at: 96 shots of a few dozen positions each give the noise to better than 2 %.
 const mostShots = 96
 
-func newSpectra(a *acquisition.Acquisition) *spectra {
+func newSpectra(a *acquisition.Acquisition, s Settings) *spectra {
 	sp := &spectra{a: a}
-	all := a.ImageShots()
+	all := s.KeptShots(a)
 	step := (len(all) + mostShots - 1) / mostShots
 	for i := 0; i < len(all); i += step {
 		sp.shots = append(sp.shots, all[i])

@@ -17,8 +17,9 @@ func ProjectionOf(a *acquisition.Acquisition, s Settings, c *Constants, delay, s
 	if err := checkUsable(a, s); err != nil {
 		return nil, nil, err
 	}
-	zero := a.TimeZeroSample + s.TimeShiftSamples
-	trace := a.Trace(delay, shot)
+	corrector, trace := NewCorrector(a, s, c, []int{delay}), make([]complex64, a.Samples)
+	corrector.Load(trace, delay, shot)
+	zero := corrector.ZeroSample(shot)
 	if a.Domain == acquisition.Projection {
 		for j, v := range trace {
 			positionMM = append(positionMM, (float64(j)-zero)*a.PositionStepMM)
@@ -37,7 +38,7 @@ func ProjectionOf(a *acquisition.Acquisition, s Settings, c *Constants, delay, s
 		x := reach * (2*float64(i)/positions - 1)
 		var sum complex128
 		for j, v := range trace {
-			sum += (complex128(v) - complex(c.OffsetReal, c.OffsetImag)) * cmplx.Rect(1, 2*math.Pi*dk*(float64(j)-zero)*x)
+			sum += complex128(v) * cmplx.Rect(1, 2*math.Pi*dk*(float64(j)-zero)*x)
 		}
 		positionMM, value = append(positionMM, x), append(value, real(sum*turn))
 	}

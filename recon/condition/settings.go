@@ -2,15 +2,39 @@ package condition
 
 import (
 	"math"
+	"slices"
 
+	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
 )
 
-// Settings of the conditioning. The zero value is not valid; use Defaults.
+// Settings of the conditioning. Offset and Phase have no valid zero value; use Defaults. Everything else is left alone
+// at its zero value.
+//
+// Drifts are straight lines over the acquisition order u of a shot, see Order.
 type Settings struct {
-	Offset           string  // a row of Offsets
-	Phase            string  // a row of Phases
-	TimeShiftSamples float64 // added to the time zero of the file
+	Offset           string  `json:"offset"`           // a row of Offsets
+	Phase            string  `json:"phase"`            // a row of Phases
+	TimeShiftSamples float64 `json:"timeShiftSamples"` // added to the time zero of the file
+
+	// The second channel records (1+QuadratureGain)·(Q cos skew + I sin skew) where Q belongs.
+	QuadratureGain    float64 `json:"quadratureGain"`
+	QuadratureSkewDeg float64 `json:"quadratureSkewDeg"`
+
+	ShotPhase string `json:"shotPhase"` // a row of ShotPhases; "" is none
+	ShotTime  string `json:"shotTime"`  // a row of ShotTimes; "" is none
+
+	PhaseDriftDeg     float64 `json:"phaseDriftDeg"`     // phase of the last shot less that of the first
+	FrequencyKHz      float64 `json:"frequencyKHz"`      // signal's frequency off the receiver's, at u = 1/2
+	FrequencyDriftKHz float64 `json:"frequencyDriftKHz"` // that of the last shot less that of the first
+	AmplitudeDrift    float64 `json:"amplitudeDrift"`    // signal of the last shot less the first's, over that at u = 1/2
+
+	// DeadSamples is how many samples after k = 0 are not used, because the receiver was not ready. The samples of
+	// k-space they would have given are taken from the others by the resampler, which knows that the object is finite.
+	DeadSamples int `json:"deadSamples"`
+
+	ExcludeShots  []int `json:"excludeShots"`  // shots that do not enter the image, zero-based
+	ExcludeDelays []int `json:"excludeDelays"` // delays that are not used, zero-based
 }
 
 // Choice is a named way to do one step.
@@ -29,28 +53,137 @@ var Phases = []Choice{
 	{"none", "leave", "take the real channel as recorded"},
 }
 
-// Defaults returns trace-ends, reference-delay and no time shift.
-func Defaults() Settings { return Settings{Offset: "trace-ends", Phase: "reference-delay"} }
+// ShotPhases are the ways to treat the phase of single shots.
+var ShotPhases = []Choice{
+	{"none", "one phase for all", "trust that every shot has the same phase"},
+	{"own", "each shot's own", "turn every shot by its own phase at k = 0, measured over all delays together"},
+}
 
-// Check returns a bad-setting fault for a value that is not known or not finite.
+// ShotTimes are the ways to treat the time zero of single shots.
+var ShotTimes = []Choice{
+	{"none", "one time zero for all", "trust that every echo stands at the same sample"},
+	{"own", "each shot's own", "put k = 0 of every shot where its echo is symmetric, measured over all delays together"},
+}
+
+// Defaults returns trace-ends, reference-delay and nothing else.
+func Defaults() Settings {
+	return Settings{Offset: "trace-ends", Phase: "reference-delay", ShotPhase: "none", ShotTime: "none"}
+}
+
+// Check returns a bad-setting fault for a value that is not known or not in range.
 func (s Settings) Check() error {
-	if !named(Offsets, s.Offset) {
-		return fault.New(fault.BadSetting, "recipe conditioning.offset", "%q is not known; use trace-ends, baseline-shots or none", s.Offset)
+	for _, c := range []struct {
+		rows        []Choice
+		value, path string
+	}{{Offsets, s.Offset, "offset"}, {Phases, s.Phase, "phase"}, {ShotPhases, orNone(s.ShotPhase), "shotPhase"}, {ShotTimes, orNone(s.ShotTime), "shotTime"}} {
+		if !named(c.rows, c.value) {
+			return fault.New(fault.BadSetting, "recipe conditioning."+c.path, "%q is not known; use %s", c.value, listed(c.rows))
+		}
 	}
-	if !named(Phases, s.Phase) {
-		return fault.New(fault.BadSetting, "recipe conditioning.phase", "%q is not known; use reference-delay or none", s.Phase)
-	}
-	if math.IsNaN(s.TimeShiftSamples) || math.IsInf(s.TimeShiftSamples, 0) {
-		return fault.New(fault.BadSetting, "recipe conditioning.timeShiftSamples", "%g; a finite number of samples is needed", s.TimeShiftSamples)
+	for _, c := range s.numbers() {
+		if !(c.value >= c.least && c.value <= c.most) {
+			return fault.New(fault.BadSetting, "recipe conditioning."+c.path, "%g; use %g to %g", c.value, c.least, c.most)
+		}
 	}
 	return nil
 }
 
+type ranged struct {
+	path        string
+	value       float64
+	least, most float64
+}
+
+// numbers lists the numeric settings with their ranges: wide enough for any receiver that still measures something.
+func (s Settings) numbers() []ranged {
+	return []ranged{
+		{"timeShiftSamples", s.TimeShiftSamples, -1e6, 1e6},
+		{"quadratureGain", s.QuadratureGain, -0.9, 9},
+		{"quadratureSkewDeg", s.QuadratureSkewDeg, -80, 80},
+		{"phaseDriftDeg", s.PhaseDriftDeg, -36000, 36000},
+		{"frequencyKHz", s.FrequencyKHz, -1e5, 1e5},
+		{"frequencyDriftKHz", s.FrequencyDriftKHz, -1e5, 1e5},
+		{"amplitudeDrift", s.AmplitudeDrift, -1.8, 1.8},
+		{"deadSamples", float64(s.DeadSamples), 0, 1e6},
+	}
+}
+
+func orNone(name string) string {
+	if name == "" {
+		return "none"
+	}
+	return name
+}
+
 func named(rows []Choice, name string) bool {
-	for _, r := range rows {
-		if r.Name == name {
-			return true
+	return slices.ContainsFunc(rows, func(r Choice) bool { return r.Name == name })
+}
+
+// listed writes "a, b or c".
+func listed(rows []Choice) string {
+	text := ""
+	for i, r := range rows {
+		switch {
+		case i == 0:
+		case i == len(rows)-1:
+			text += " or "
+		default:
+			text += ", "
+		}
+		text += r.Name
+	}
+	return text
+}
+
+// KeptShots returns the image shots that are not excluded, in acquisition order.
+func (s Settings) KeptShots(a *acquisition.Acquisition) []int {
+	return without(a.ImageShots(), s.ExcludeShots)
+}
+
+// KeptDelays returns the delays that are not excluded, in the order of the file.
+func (s Settings) KeptDelays(a *acquisition.Acquisition) []int {
+	all := make([]int, a.Delays)
+	for d := range all {
+		all[d] = d
+	}
+	return without(all, s.ExcludeDelays)
+}
+
+func without(all, excluded []int) []int {
+	var out []int
+	for _, i := range all {
+		if !slices.Contains(excluded, i) {
+			out = append(out, i)
 		}
 	}
-	return false
+	return out
+}
+
+// ReferenceDelay returns the index of the delay that carries the phase reference among those kept, see
+// Acquisition.ReferenceDelay.
+func (s Settings) ReferenceDelay(a *acquisition.Acquisition) int {
+	kept := s.KeptDelays(a)
+	only := *a
+	only.DelayUS = nil
+	for _, d := range kept {
+		only.DelayUS = append(only.DelayUS, a.DelayUS[d])
+	}
+	return kept[only.ReferenceDelay()]
+}
+
+// Order returns the place u of every shot in the acquisition, 0 for the first to 1 for the last: by shot_time_s where
+// the file has it, else by index.
+func Order(a *acquisition.Acquisition) []float64 {
+	u := make([]float64, a.Shots)
+	if t := a.Optional.ShotTimeS; len(t) == a.Shots && slices.Max(t) > slices.Min(t) {
+		first, span := slices.Min(t), slices.Max(t)-slices.Min(t)
+		for s := range u {
+			u[s] = (t[s] - first) / span
+		}
+		return u
+	}
+	for s := range u {
+		u[s] = float64(s) / math.Max(1, float64(a.Shots-1))
+	}
+	return u
 }

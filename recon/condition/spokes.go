@@ -64,9 +64,9 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 	if !(g.BandMM > 0) || !(g.KCut > 0) {
 		return nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
 	}
-	sp := newSpokes(a, g, delays)
+	sp := newSpokes(a, s, g, delays)
 	for _, d := range delays {
-		sp.NoiseDensity = append(sp.NoiseDensity, noiseDensity(a, c, d))
+		sp.NoiseDensity = append(sp.NoiseDensity, noiseDensity(a, c, sp.Shot, d))
 		sp.rawSD = append(sp.rawSD, c.NoiseSD[d])
 	}
 	reader := newReader(a, s, c, sp)
@@ -78,8 +78,8 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 	return sp, nil
 }
 
-func newSpokes(a *acquisition.Acquisition, g Geometry, delays []int) *Spokes {
-	sp := &Spokes{Dim: a.Dim, DeltaK: 1 / (2 * g.BandMM), Half: g.half(), BandMM: g.BandMM, Delays: delays, Shot: a.ImageShots()}
+func newSpokes(a *acquisition.Acquisition, s Settings, g Geometry, delays []int) *Spokes {
+	sp := &Spokes{Dim: a.Dim, DeltaK: 1 / (2 * g.BandMM), Half: g.half(), BandMM: g.BandMM, Delays: delays, Shot: s.KeptShots(a)}
 	sp.Samples = make([]complex64, len(sp.Shot)*(sp.Half+1)*len(delays))
 	sp.OneSided = make([]int, len(sp.Shot))
 	sp.from = make([]*Resampler, len(sp.Shot))
@@ -92,12 +92,12 @@ func newSpokes(a *acquisition.Acquisition, g Geometry, delays []int) *Spokes {
 
 // noiseDensity follows from one raw sample standing for dk (or, of a projection, for its step in position). Shots of
 // different gradient strength differ in it; the mean strength is used.
-func noiseDensity(a *acquisition.Acquisition, c *Constants, d int) float64 {
+func noiseDensity(a *acquisition.Acquisition, c *Constants, shots []int, d int) float64 {
 	v := c.NoiseSD[d] * c.NoiseSD[d]
 	if a.Domain == acquisition.Projection {
 		return v * a.PositionStepMM
 	}
-	sum, shots := 0.0, a.ImageShots()
+	sum := 0.0
 	for _, s := range shots {
 		sum += a.Strength(s)
 	}
@@ -110,47 +110,31 @@ func (sp *Spokes) Row(shot, m int) []complex64 {
 	return sp.Samples[at : at+len(sp.Delays) : at+len(sp.Delays)]
 }
 
-// reader fills spokes from traces or projections. Shots of equal gradient strength share one resampler.
+// reader fills spokes from traces or projections. Shots of equal gradient strength and time zero share one resampler.
 type reader struct {
 	a          *acquisition.Acquisition
 	sp         *Spokes
+	corrector  *Corrector
 	turn       complex128
-	offset     complex128
-	baseline   [][]complex64 // [delay of sp][sample], nil when none
-	zero       float64
+	dead       int
 	beta       float64
-	resamplers map[int64]*Resampler
+	resamplers map[resamplerKey]*Resampler
 	waves      []complex128 // [m][sample] of a projection's transform
 	work       []complex64
 }
 
+type resamplerKey struct{ strength, zero int64 }
+
 func newReader(a *acquisition.Acquisition, s Settings, c *Constants, sp *Spokes) *reader {
-	r := &reader{a: a, sp: sp, zero: a.TimeZeroSample + s.TimeShiftSamples, resamplers: map[int64]*Resampler{},
-		turn: cmplx.Rect(1, -c.PhaseRad), offset: complex(c.OffsetReal, c.OffsetImag), work: make([]complex64, a.Samples)}
+	r := &reader{a: a, sp: sp, corrector: NewCorrector(a, s, c, sp.Delays), dead: s.DeadSamples, resamplers: map[resamplerKey]*Resampler{},
+		turn: cmplx.Rect(1, -c.PhaseRad), work: make([]complex64, a.Samples)}
 	// Above four fifths of the alias-free field the band is narrowed to the object, to leave the interpolation room.
 	band := math.Min(sp.BandMM, math.Max(1.1*c.ExtentMM, 0.8*a.AliasFreeMM()))
 	r.beta = math.Min(1, band/a.AliasFreeMM())
-	if s.Offset == "baseline-shots" {
-		r.baseline = baselines(a, sp.Delays)
-	}
 	if a.Domain == acquisition.Projection {
-		r.waves = projectionWaves(a, sp, r.zero)
+		r.waves = projectionWaves(a, sp, a.TimeZeroSample+s.TimeShiftSamples)
 	}
 	return r
-}
-
-func baselines(a *acquisition.Acquisition, delays []int) [][]complex64 {
-	shots := a.BaselineShots()
-	out := make([][]complex64, len(delays))
-	for i, d := range delays {
-		out[i] = make([]complex64, a.Samples)
-		for _, s := range shots {
-			for j, v := range a.Trace(d, s) {
-				out[i][j] += v / complex(float32(len(shots)), 0)
-			}
-		}
-	}
-	return out
 }
 
 // projectionWaves returns step·exp(-i2π k_m x_j): a projection times this is its transform at k_m.
@@ -176,7 +160,7 @@ func (r *reader) fill(i int) error {
 	}
 	r.sp.OneSided[i], r.sp.from[i] = r.sp.Half+1, resampler
 	for d := range r.sp.Delays {
-		r.loadTrace(i, d)
+		r.corrector.Load(r.work, r.sp.Delays[d], r.sp.Shot[i])
 		for m := range r.sp.Half + 1 {
 			value, sides := r.hermitian(resampler, m)
 			r.sp.Row(i, m)[d] = complex64(value * r.turn)
@@ -186,16 +170,6 @@ func (r *reader) fill(i int) error {
 		}
 	}
 	return nil
-}
-
-// loadTrace puts the trace of shot i at delay d into work, offset and baseline taken off.
-func (r *reader) loadTrace(i, d int) {
-	for j, v := range r.a.Trace(r.sp.Delays[d], r.sp.Shot[i]) {
-		if r.baseline != nil {
-			v -= r.baseline[d][j]
-		}
-		r.work[j] = v - complex64(r.offset)
-	}
 }
 
 // hermitian returns the Hermitian part of the loaded trace at m before phasing, such that turning it by the phase gives
@@ -215,19 +189,26 @@ func (r *reader) hermitian(rs *Resampler, m int) (complex128, int) {
 	return 0, 0
 }
 
-// resampler returns the resampler of a shot's gradient strength; strengths that agree to 1 in 10⁷ share one.
+// zeroSteps is into how many steps a sample is divided where every shot has its own time zero, so that shots can share
+// resamplers: a 64th of a sample at most is far below what an echo's place can be told to.
+const zeroSteps = 32
+
+// resampler returns the resampler of a shot; strengths that agree to 1 in 10⁷ share one.
 func (r *reader) resampler(shot int) (*Resampler, error) {
-	strength := r.a.Strength(shot)
-	key := int64(math.Round(math.Log(strength) * 1e7))
+	strength, zero := r.a.Strength(shot), r.corrector.ZeroSample(shot)
+	if r.corrector.c.ShotShiftSamples != nil {
+		zero = math.Round(zero*zeroSteps) / zeroSteps
+	}
+	key := resamplerKey{int64(math.Round(math.Log(strength) * 1e7)), int64(math.Round(zero * zeroSteps))}
 	if rs := r.resamplers[key]; rs != nil {
 		return rs, nil
 	}
 	step := r.sp.DeltaK / acquisition.KPerNS(strength, r.a.DwellNS)
 	at := make([]place, 0, 2*r.sp.Half+1)
 	for m := -r.sp.Half; m <= r.sp.Half; m++ {
-		at = append(at, r.zero+float64(m)*step)
+		at = append(at, zero+float64(m)*step)
 	}
-	rs, err := NewResampler(r.a.Samples, r.beta, at)
+	rs, err := newResampler(r.a.Samples, firstUsable(r.dead, zero), r.beta, at)
 	if err == nil {
 		r.resamplers[key] = rs
 	}
@@ -237,7 +218,7 @@ func (r *reader) resampler(shot int) (*Resampler, error) {
 func (r *reader) fillFromProjection(i int) {
 	r.sp.OneSided[i] = r.sp.Half + 1
 	for d := range r.sp.Delays {
-		r.loadTrace(i, d)
+		r.corrector.Load(r.work, r.sp.Delays[d], r.sp.Shot[i])
 		for m := range r.sp.Half + 1 {
 			var sum complex128
 			for j, w := range r.waves[m*r.a.Samples : (m+1)*r.a.Samples] {
