@@ -77,6 +77,7 @@ type Array struct {
 	Shape      []int             // empty for a single value
 	Unit       string            // as the file states it, or empty
 	Attributes map[string]string // whatever else the file says of it
+	AfterFile  bool              // Name is the file's, which held none for it
 
 	layout Layout
 	raw    []byte

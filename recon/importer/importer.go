@@ -27,10 +27,19 @@ type Format struct {
 	// Read returns the arrays in data. The arrays may keep data, which must not change afterwards. A format of
 	// one unnamed array names it after the file.
 	Read func(name string, data []byte, limits Limits) ([]acquisition.Array, error)
+
+	// Unpack stands in the place of Read when the format holds other files: it returns them.
+	Unpack func(name string, data []byte, limits Limits) ([]File, error)
+}
+
+// File is the bytes of one file. Name may have folders, parted by slashes.
+type File struct {
+	Name string
+	Data []byte
 }
 
 // Formats lists what can be read. The first row that recognises a file reads it.
-var Formats = []Format{numpyArray, numpyArchive}
+var Formats = []Format{numpyArray, numpyArchive, hdf5, zipArchive, matLevel5, gzipped, matLevel4}
 
 // HeadBytes is how much of a file's beginning a format may ask for to recognise it.
 const HeadBytes = 4096
@@ -44,20 +53,48 @@ func Read(name string, data []byte) ([]acquisition.Array, error) {
 
 // ReadWithin is Read with limits that a person has confirmed.
 func ReadWithin(limits Limits, name string, data []byte) ([]acquisition.Array, error) {
-	format, err := recognise(name, data)
-	if err != nil {
-		return nil, err
-	}
-	return format.guarded(name, data, limits)
+	tree, err := readTree(limits, name, data, 0)
+	return tree.Arrays, err
 }
 
 // Open returns the acquisition in a file that uses the field dictionary, and warnings as of acquisition.FromArrays.
 func Open(name string, data []byte) (*acquisition.Acquisition, []string, error) {
-	arrays, err := Read(name, data)
+	tree, err := readTree(Default, name, data, 0)
 	if err != nil {
 		return nil, nil, err
 	}
-	return acquisition.FromArrays(name, arrays)
+	a, warnings, err := acquisition.FromArrays(name, tree.Arrays)
+	return a, append(tree.Notes, warnings...), err
+}
+
+// readTree reads one file, and the files in it when it is a container.
+func readTree(limits Limits, name string, data []byte, depth int) (Tree, error) {
+	if depth > limits.Nesting {
+		return Tree{}, fault.New(fault.TooLarge, name, "packed more than %d times", limits.Nesting)
+	}
+	format, err := recognise(name, data)
+	if err != nil {
+		return Tree{}, err
+	}
+	if format.Unpack == nil {
+		arrays, err := format.guarded(name, data, limits)
+		return Tree{Arrays: arrays}, err
+	}
+	files, err := format.unpack(name, data, limits)
+	if err != nil {
+		return Tree{}, err
+	}
+	for _, f := range files { // archives in archives share what the outermost may unpack to
+		limits.UnpackedBytes -= int64(len(f.Data))
+	}
+	if len(files) == 1 {
+		return readTree(limits, files[0].Name, files[0].Data, depth+1)
+	}
+	tree, err := readSet(limits, files, depth+1)
+	if err != nil {
+		return Tree{}, fault.Within(name, err)
+	}
+	return tree, nil
 }
 
 func recognise(name string, data []byte) (Format, error) {
@@ -78,14 +115,26 @@ func recognise(name string, data []byte) (Format, error) {
 
 // guarded reads with the file's name put before the place of a fault, and a panic of the reader made a bug fault.
 func (f Format) guarded(name string, data []byte, limits Limits) (arrays []acquisition.Array, err error) {
-	defer func() {
-		if cause := recover(); cause != nil {
-			arrays, err = nil, fault.New(fault.Bug, name, "the %s reader failed: %v\n%s", f.Name, cause, debug.Stack())
-		}
-	}()
+	defer f.catch(name, &err)
 	arrays, err = f.Read(name, data, limits)
 	if err != nil {
 		return nil, fault.Within(name, err)
 	}
 	return arrays, nil
+}
+
+// unpack is guarded for containers.
+func (f Format) unpack(name string, data []byte, limits Limits) (files []File, err error) {
+	defer f.catch(name, &err)
+	files, err = f.Unpack(name, data, limits)
+	if err != nil {
+		return nil, fault.Within(name, err)
+	}
+	return files, nil
+}
+
+func (f Format) catch(name string, err *error) {
+	if cause := recover(); cause != nil {
+		*err = fault.New(fault.Bug, name, "the %s reader failed: %v\n%s", f.Name, cause, debug.Stack())
+	}
 }

@@ -13,11 +13,16 @@ type Limits struct {
 	Members       int   // arrays in one archive
 	UnpackedBytes int64 // all members of one archive together
 	Ratio         int64 // unpacked bytes per byte of archive
+	HarmlessBytes int64 // a gzip file may unpack to so many, whatever the ratio
+	Nesting       int   // structs, cells, blocks and archives within each other
+	Arrays        int   // arrays in one file, or files in one set
 }
 
 // Default is what is read without asking. The largest acquisition expected, 3000 shots of 2048 samples at 10 delays,
 // has 2^26 elements and half a GiB. A browser worker can hold 2 GiB beside its own work. Measured traces do not pack
-// below half their size, so 200:1 is either constant data or an attack.
+// below half their size, so 200:1 is either constant data or an attack; but a mask, which comes as a NIfTI volume packed by
+// gzip, is nearly all zeros and may pack 1000:1, so one of 256 voxels along each axis passes. Ten delays of 3000 shots,
+// each a cell or a file of its own, are 30000.
 var Default = Limits{
 	HeaderBytes:   64 << 10,
 	Dimensions:    8,
@@ -25,6 +30,9 @@ var Default = Limits{
 	Members:       1000,
 	UnpackedBytes: 2 << 30,
 	Ratio:         200,
+	HarmlessBytes: 32 << 20,
+	Nesting:       32,
+	Arrays:        1 << 16,
 }
 
 // checkHeader returns a too-large fault when a header states more bytes than are let pass.

@@ -20,6 +20,7 @@ var numpyArray = Format{
 	Read: func(name string, data []byte, limits Limits) ([]acquisition.Array, error) {
 		array, err := parseNPY(data, limits)
 		array.Name = strings.TrimSuffix(path.Base(name), ".npy")
+		array.AfterFile = true
 		return []acquisition.Array{array}, err
 	},
 }

@@ -3,6 +3,7 @@ package importer
 import (
 	"archive/zip"
 	"bytes"
+	"encoding/binary"
 	"errors"
 	"fmt"
 	"io"
@@ -17,9 +18,53 @@ var numpyArchive = Format{
 	Name:       "NumPy archive",
 	Extensions: []string{".npz"},
 	Recognise: func(head []byte) bool {
-		return bytes.HasPrefix(head, []byte("PK\x03\x04")) || bytes.HasPrefix(head, []byte(zipEnd))
+		return bytes.HasPrefix(head, []byte(zipEnd)) || strings.HasSuffix(firstMember(head), ".npy")
 	},
 	Read: readNPZ,
+}
+
+// zipArchive is a ZIP archive of files of the other formats.
+var zipArchive = Format{
+	Name:       "ZIP archive",
+	Extensions: []string{".zip"},
+	Recognise:  func(head []byte) bool { return bytes.HasPrefix(head, []byte(zipMember)) },
+	Unpack:     unpackZIP,
+}
+
+// zipMember begins every member of a ZIP archive.
+// Source: PKWARE, .ZIP File Format Specification (APPNOTE 6.3), 4.3.7.
+const zipMember = "PK\x03\x04"
+
+// firstMember returns the name of the first member of an archive that begins with head.
+func firstMember(head []byte) string {
+	const lengthAt, nameAt = 26, 30
+	if !bytes.HasPrefix(head, []byte(zipMember)) || len(head) < nameAt {
+		return ""
+	}
+	end := nameAt + int(binary.LittleEndian.Uint16(head[lengthAt:]))
+	return string(head[nameAt:min(end, len(head))])
+}
+
+func unpackZIP(_ string, data []byte, limits Limits) ([]File, error) {
+	archive, err := openZIP(data)
+	if err != nil {
+		return nil, err
+	}
+	if err := checkMembers(archive.File, int64(len(data)), limits); err != nil {
+		return nil, err
+	}
+	var files []File
+	for _, member := range archive.File {
+		if hidden(member.Name) {
+			continue
+		}
+		data, err := unpack(member)
+		if err != nil {
+			return nil, fault.Within(member.Name, err)
+		}
+		files = append(files, File{member.Name, data})
+	}
+	return files, nil
 }
 
 // zipEnd begins the record that closes a ZIP archive; an archive without members begins with it.
