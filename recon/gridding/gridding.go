@@ -4,7 +4,8 @@
 //
 // which is the sum that back-projection evaluates by interpolating projections. Here the weight may differ from sample
 // to sample, and the only error is that of the gridding kernel, which Settings choose. The result is quantitative:
-// signal per mm² or mm³. Voxels outside the circle or sphere of the field of view are NaN.
+// signal per mm² or mm³. Voxels outside the circle or sphere of the field of view are NaN. The noise of the images is
+// that of condition.Spokes.NoiseSDOf.
 //
 // Source: O'Sullivan, A fast sinc function gridding algorithm for Fourier inversion in computer tomography, IEEE Trans.
 // Med. Imaging 4 (1985) 200, for reconstruction by gridding; package nufft for the kernel.
@@ -128,7 +129,7 @@ type summer struct {
 	lanes   int
 	image   []float32 // [voxel][2·lanes]
 	points  [][3]float64
-	values  []float32 // [point][2·lanes]
+	values  []float32 // [point][2·lanes] pairs
 	share   float64   // of the work that is spreading
 }
 
@@ -145,7 +146,7 @@ func (s *summer) run(from, to int, progress func(float64)) error {
 	s.grid.Reset()
 	for i := range s.sp.Shot {
 		s.load(i, from, to)
-		if err := s.grid.Spread(s.points, s.values); err != nil {
+		if err := s.grid.SpreadReal(s.points, s.values); err != nil {
 			return err
 		}
 		progress(s.share * float64(i+1) / float64(len(s.sp.Shot)))
@@ -154,42 +155,28 @@ func (s *summer) run(from, to int, progress func(float64)) error {
 	return nil
 }
 
-// load puts the samples of spoke i that have a weight into points and values.
+// load puts the samples of spoke i that have a weight into points and values, at their places in cycles per field of view.
+// The sample at the origin is its own mirror and would count twice.
 func (s *summer) load(i, from, to int) {
 	s.points, s.values = s.points[:0], s.values[:0]
-	weights := s.weights[i*(s.sp.Half+1) : (i+1)*(s.sp.Half+1)]
-	for m := s.sp.Half; m > 0; m-- {
-		s.add(i, -m, weights[m], from, to)
-	}
-	for m, w := range weights {
-		s.add(i, m, w, from, to)
-	}
-}
-
-// add appends sample m of spoke i, its place in cycles per field of view. Two delays a, b of real images travel as
-// a + ib: their values at ±k are A ± and B with A(-k) = A*(k).
-func (s *summer) add(i, m int, weight float64, from, to int) {
-	if weight == 0 {
-		return
-	}
-	var k [3]float64
-	for axis, n := range s.sp.Directions[i] {
-		k[axis] = float64(m) * s.sp.DeltaK * n * float64(s.g.N[axis]) * s.g.VoxelMM[axis]
-	}
-	s.points = append(s.points, k)
-	w, row := float32(weight), s.sp.Row(i, max(m, -m))[from:to]
-	for l := range s.lanes {
-		var a, b complex64
-		if 2*l < len(row) {
-			a = row[2*l]
+	for m := range s.sp.Half + 1 {
+		weight := s.weights[i*(s.sp.Half+1)+m]
+		if m == 0 {
+			weight /= 2
 		}
-		if 2*l+1 < len(row) {
-			b = row[2*l+1]
+		if weight == 0 {
+			continue
 		}
-		if m < 0 {
-			s.values = append(s.values, w*(real(a)+imag(b)), w*(real(b)-imag(a)))
-		} else {
-			s.values = append(s.values, w*(real(a)-imag(b)), w*(imag(a)+real(b)))
+		var k [3]float64
+		for axis, n := range s.sp.Directions[i] {
+			k[axis] = float64(m) * s.sp.DeltaK * n * float64(s.g.N[axis]) * s.g.VoxelMM[axis]
+		}
+		s.points = append(s.points, k)
+		for _, v := range s.sp.Row(i, m)[from:to] {
+			s.values = append(s.values, float32(weight)*real(v), float32(weight)*imag(v))
+		}
+		for range 2*s.lanes - (to - from) {
+			s.values = append(s.values, 0, 0)
 		}
 	}
 }
@@ -214,26 +201,4 @@ func (s *summer) store(out []float32, from, to int) {
 			}
 		}
 	}
-}
-
-// NoiseSD returns the predicted SD of noise, per delay, in the images of these weights. It is condition.Spokes.NoiseSD
-// for weights that differ from sample to sample. Exact for white noise.
-func NoiseSD(sp *condition.Spokes, weights []float64) []float64 {
-	sum := 0.0
-	for i := range sp.Shot {
-		for m, w := range weights[i*(sp.Half+1) : (i+1)*(sp.Half+1)] {
-			count := 2.0 // a sample and its mirror
-			if m == 0 {
-				count = 1
-			} else if m >= sp.OneSided[i] {
-				count = 4 // where both come from one half of the echo, they carry the same noise
-			}
-			sum += count * w * w / sp.DeltaK
-		}
-	}
-	out := make([]float64, len(sp.Delays))
-	for d, density := range sp.NoiseDensity {
-		out[d] = math.Sqrt(density * sum)
-	}
-	return out
 }

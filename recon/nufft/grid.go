@@ -17,6 +17,7 @@ type Grid[F Float] struct {
 	wrap   [2][]int    // for y and z: where the cells 0..length+width-1 are stored
 	bundle [3]lines[F] // per axis
 	row    []F         // one point's share of a row of cells
+	pairs  []F         // one point's values
 	place  place
 }
 
@@ -30,19 +31,20 @@ type place struct {
 const bundled = 24
 
 // NewGrid returns an empty grid.
-func (p *Plan[F]) NewGrid(lanes int) *Grid[F] {
-	g := &Grid[F]{plan: p, lanes: lanes, cells: make([]F, p.Cells()*2*lanes)}
-	g.row = make([]F, p.axes[0].width()*2*lanes)
+func (p *Plan[F]) NewGrid(lanes int) *Grid[F] { return p.newGrid(lanes, p.axes[2].length) }
+
+// newGrid returns a grid that stores so many planes along z.
+func (p *Plan[F]) newGrid(lanes, planes int) *Grid[F] {
+	g := &Grid[F]{plan: p, lanes: lanes, cells: make([]F, planes*p.axes[1].length*p.rowCells()*2*lanes)}
+	g.row, g.pairs = make([]F, p.axes[0].width*2*lanes), make([]F, 2*lanes)
 	for i := range g.wrap {
 		a := &p.axes[i+1]
-		for cell := range a.length + a.width() {
+		for cell := range a.length + a.width {
 			g.wrap[i] = append(g.wrap[i], cell%a.length)
 		}
 	}
 	for i := range g.bundle {
-		if p.axes[i].n > 1 {
-			g.bundle[i] = newLines[F](p.axes[i].length, g.columns()*lanes)
-		}
+		g.bundle[i] = newLines[F](p.axes[i].length, g.columns()*lanes)
 	}
 	return g
 }
@@ -57,7 +59,7 @@ func (g *Grid[F]) Reset() { clear(g.cells) }
 //
 // Errors: bad-setting when a point is not finite or values does not hold lanes pairs per point.
 func (g *Grid[F]) Spread(points [][3]float64, values []F) error {
-	if err := g.check(points, values); err != nil {
+	if err := g.check(points, values, 2*g.lanes); err != nil {
 		return err
 	}
 	pairs := 2 * g.lanes
@@ -69,11 +71,35 @@ func (g *Grid[F]) Spread(points [][3]float64, values []F) error {
 	return nil
 }
 
+// SpreadReal adds values of real images at points, and their mirrors, the complex conjugates at -k. Two real images share
+// a lane, one as its real and one as its imaginary part, so that values is [point][image] with 2·lanes images, in pairs.
+// The origin is its own mirror and counts twice.
+//
+// Errors: those of Spread.
+func (g *Grid[F]) SpreadReal(points [][3]float64, values []F) error {
+	if err := g.check(points, values, 4*g.lanes); err != nil {
+		return err
+	}
+	for j, k := range points {
+		images := values[j*4*g.lanes : (j+1)*4*g.lanes]
+		for _, sign := range [2]F{1, -1} {
+			g.locate(&[3]float64{float64(sign) * k[0], float64(sign) * k[1], float64(sign) * k[2]})
+			for l := range g.lanes { // a + ib, where a* stands at the mirror of a
+				a, b := images[4*l:4*l+2], images[4*l+2:4*l+4]
+				g.pairs[2*l], g.pairs[2*l+1] = a[0]-sign*b[1], sign*a[1]+b[0]
+			}
+			g.weighRow(g.pairs)
+			g.addRows()
+		}
+	}
+	return nil
+}
+
 // Interpolate puts the values of the loaded image at points into values, [point][lane].
 //
 // Errors: those of Spread.
 func (g *Grid[F]) Interpolate(points [][3]float64, values []F) error {
-	if err := g.check(points, values); err != nil {
+	if err := g.check(points, values, 2*g.lanes); err != nil {
 		return err
 	}
 	pairs := 2 * g.lanes
@@ -85,8 +111,8 @@ func (g *Grid[F]) Interpolate(points [][3]float64, values []F) error {
 	return nil
 }
 
-func (g *Grid[F]) check(points [][3]float64, values []F) error {
-	if len(values) != len(points)*2*g.lanes {
+func (g *Grid[F]) check(points [][3]float64, values []F, perPoint int) error {
+	if len(values) != len(points)*perPoint {
 		return fault.New(fault.BadSetting, "gridding", "%d numbers for %d points in %d lanes", len(values), len(points), g.lanes)
 	}
 	for j, k := range points {
@@ -120,7 +146,7 @@ func (g *Grid[F]) locate(k *[3]float64) {
 // weighRow fills row with the values times the weights along x.
 func (g *Grid[F]) weighRow(values []F) {
 	row := g.row
-	for ix := range g.plan.axes[0].width() {
+	for ix := range g.plan.axes[0].width {
 		w := F(g.place.weight[0][ix])
 		part := row[ix*len(values) : (ix+1)*len(values)]
 		for l, v := range values {
@@ -131,8 +157,8 @@ func (g *Grid[F]) weighRow(values []F) {
 
 // addRows adds row to every row of cells that the point touches.
 func (g *Grid[F]) addRows() {
-	for iz := range g.plan.axes[2].width() {
-		for iy := range g.plan.axes[1].width() {
+	for iz := range g.plan.axes[2].width {
+		for iy := range g.plan.axes[1].width {
 			at, w := g.touched(iy, iz)
 			addScaled(g.cells[at:at+len(g.row)], g.row, w)
 		}
@@ -142,8 +168,8 @@ func (g *Grid[F]) addRows() {
 // sumRows puts the weighted sum of the rows of cells that the point touches into row.
 func (g *Grid[F]) sumRows() {
 	clear(g.row)
-	for iz := range g.plan.axes[2].width() {
-		for iy := range g.plan.axes[1].width() {
+	for iz := range g.plan.axes[2].width {
+		for iy := range g.plan.axes[1].width {
 			at, w := g.touched(iy, iz)
 			addScaled(g.row, g.cells[at:at+len(g.row)], w)
 		}
@@ -179,7 +205,7 @@ func addScaled[F Float](sum, from []F, w F) {
 // sumRow puts the sum of row, weighted along x, into values.
 func (g *Grid[F]) sumRow(values []F) {
 	clear(values)
-	for ix := range g.plan.axes[0].width() {
+	for ix := range g.plan.axes[0].width {
 		w := F(g.place.weight[0][ix])
 		part := g.row[ix*len(values) : (ix+1)*len(values)]
 		for l, v := range part {

@@ -11,6 +11,8 @@ type lines[F Float] interface {
 	add(row, at int, pairs []F)
 	// transform replaces every line by Σ_j x_j exp(-i2πjk/length); false when all were zero and stay so.
 	transform() bool
+	// multiply multiplies a row by real factors, one for every lanes neighbouring lines.
+	multiply(row int, factors []F, lanes int)
 	// take copies a row, from line at onwards, into pairs, scaled.
 	take(row, at int, pairs []F, scale F)
 }
@@ -19,12 +21,12 @@ func newLines[F Float](length, most int) lines[F] {
 	// The lengths are even and smooth or 1: always valid.
 	if _, single := any(F(0)).(float32); single {
 		plan, _ := fft.NewPlan[complex64](length)
-		b := &bundle[float32, complex64]{plan: plan, pack: pack32, packMore: packMore32, unpack: unpack32}
+		b := &bundle[float32, complex64]{plan: plan, pack: pack32, packMore: packMore32, unpack: unpack32, scale: scale32}
 		b.room(length * most)
 		return any(b).(lines[F])
 	}
 	plan, _ := fft.NewPlan[complex128](length)
-	b := &bundle[float64, complex128]{plan: plan, pack: pack64, packMore: packMore64, unpack: unpack64}
+	b := &bundle[float64, complex128]{plan: plan, pack: pack64, packMore: packMore64, unpack: unpack64, scale: scale64}
 	b.room(length * most)
 	return any(b).(lines[F])
 }
@@ -38,6 +40,7 @@ type bundle[F Float, C fft.Complex] struct {
 	pack          func(to []C, pairs []F)
 	packMore      func(to []C, pairs []F)
 	unpack        func(pairs []F, from []C, scale F)
+	scale         func(row []C, factor F)
 }
 
 func (b *bundle[F, C]) room(n int) { b.data, b.scratch = make([]C, n), make([]C, n) }
@@ -72,6 +75,13 @@ func (b *bundle[F, C]) transform() bool {
 		b.plan.Forward(b.data, b.scratch, b.count)
 	}
 	return b.filled
+}
+
+func (b *bundle[F, C]) multiply(row int, factors []F, lanes int) {
+	for i, f := range factors {
+		from := row*b.count + i*lanes
+		b.scale(b.data[from:from+lanes], f)
+	}
 }
 
 func (b *bundle[F, C]) take(row, at int, pairs []F, scale F) {
@@ -112,5 +122,17 @@ func packMore64(to []complex128, pairs []float64) {
 func unpack64(pairs []float64, from []complex128, scale float64) {
 	for i, v := range from {
 		pairs[2*i], pairs[2*i+1] = real(v)*scale, imag(v)*scale
+	}
+}
+
+func scale32(row []complex64, factor float32) {
+	for i, v := range row {
+		row[i] = complex(real(v)*factor, imag(v)*factor)
+	}
+}
+
+func scale64(row []complex128, factor float64) {
+	for i, v := range row {
+		row[i] = complex(real(v)*factor, imag(v)*factor)
 	}
 }

@@ -63,6 +63,7 @@ type Plan[F Float] struct {
 type axis struct {
 	n          int       // voxels
 	length     int       // cells of the periodic grid
+	width      int       // cells that a point touches
 	scale      float64   // cells per unit of k
 	kernel     *kernel   // nil when the axis is absent
 	correction []float64 // per voxel: 1 over the transform of the kernel there
@@ -91,9 +92,9 @@ func NewPlan[F Float](n [3]int, s Settings) (*Plan[F], error) {
 
 func newAxis(n int, s Settings) axis {
 	if n == 1 {
-		return axis{n: 1, length: 1, scale: 1, correction: []float64{1}}
+		return axis{n: 1, length: 1, width: 1, scale: 1, correction: []float64{1}}
 	}
-	a := axis{n: n, length: gridLength(n, s.Oversampling)}
+	a := axis{n: n, length: gridLength(n, s.Oversampling), width: s.Width}
 	a.scale = float64(a.length) / float64(n)
 	a.kernel = newKernel(s.Width, a.scale)
 	a.correction = make([]float64, n)
@@ -110,14 +111,6 @@ func gridLength(n int, oversampling float64) int {
 	return fft.FastLength(length)
 }
 
-// width returns the cells a point touches along the axis.
-func (a *axis) width() int {
-	if a.kernel == nil {
-		return 1
-	}
-	return a.kernel.width
-}
-
 // Voxels returns the number of voxels of an image.
 func (p *Plan[F]) Voxels() int { return p.axes[0].n * p.axes[1].n * p.axes[2].n }
 
@@ -125,10 +118,10 @@ func (p *Plan[F]) Voxels() int { return p.axes[0].n * p.axes[1].n * p.axes[2].n 
 func (p *Plan[F]) Cells() int { return p.rowCells() * p.axes[1].length * p.axes[2].length }
 
 // Touched returns the number of cells that one point is spread over.
-func (p *Plan[F]) Touched() int { return p.axes[0].width() * p.axes[1].width() * p.axes[2].width() }
+func (p *Plan[F]) Touched() int { return p.axes[0].width * p.axes[1].width * p.axes[2].width }
 
 // rowCells returns the cells stored per row along x: the period and, beyond it, room for points near its end.
-func (p *Plan[F]) rowCells() int { return p.axes[0].length + p.axes[0].width() }
+func (p *Plan[F]) rowCells() int { return p.axes[0].length + p.axes[0].width }
 
 // Adjoint returns the image, [voxel][lane], of values at points, [point][lane].
 //

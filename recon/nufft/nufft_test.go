@@ -102,53 +102,61 @@ func rule(width int, oversampling float64) float64 {
 func TestSumsEqualTheSlowSumsToTheAccuracyOfTheWidth(t *testing.T) {
 	r := rand.New(rand.NewPCG(11, 12))
 	for _, n := range sizes {
-		for _, oversampling := range []float64{1.25, 1.5, 2} {
-			for width := MinWidth; width <= MaxWidth; width++ {
-				p, err := NewPlan[float64](n, Settings{width, oversampling})
-				if err != nil {
-					t.Fatal(err)
-				}
-				const lanes = 2
-				points := scattered(r, n, 150)
-				values, image := white[float64](r, len(points)*2*lanes), white[float64](r, p.Voxels()*2*lanes)
-				gotImage, err := p.Adjoint(points, values, lanes)
-				if err != nil {
-					t.Fatal(err)
-				}
-				gotValues, err := p.Forward(points, image, lanes)
-				if err != nil {
-					t.Fatal(err)
-				}
-				back, forth := relative(gotImage, slowAdjoint(n, points, values, lanes)), relative(gotValues, slowForward(n, points, image, lanes))
-				if worst := math.Max(back, forth); !(worst <= rule(width, oversampling)) {
-					t.Errorf("%v width %d oversampling %g: relative error %.3g, the rule allows %.3g", n, width, oversampling, worst, rule(width, oversampling))
-				}
+		const lanes = 2
+		points := scattered(r, n, 150)
+		values, image := white[float64](r, len(points)*2*lanes), white[float64](r, n[0]*n[1]*n[2]*2*lanes)
+		wantImage, wantValues := slowAdjoint(n, points, values, lanes), slowForward(n, points, image, lanes)
+		for _, s := range everySetting() {
+			p, err := NewPlan[float64](n, s)
+			if err != nil {
+				t.Fatal(err)
+			}
+			gotImage, err := p.Adjoint(points, values, lanes)
+			if err != nil {
+				t.Fatal(err)
+			}
+			gotValues, err := p.Forward(points, image, lanes)
+			if err != nil {
+				t.Fatal(err)
+			}
+			worst := math.Max(relative(gotImage, wantImage), relative(gotValues, wantValues))
+			if most := rule(s.Width, s.Oversampling); !(worst <= most) {
+				t.Errorf("%v %+v: relative error %.3g, the rule allows %.3g", n, s, worst, most)
 			}
 		}
 	}
+}
+
+func everySetting() []Settings {
+	var out []Settings
+	for _, oversampling := range []float64{1.25, 1.5, 2} {
+		for width := MinWidth; width <= MaxWidth; width++ {
+			out = append(out, Settings{width, oversampling})
+		}
+	}
+	return out
 }
 
 // The predicted error is not merely a bound: where the transform length is the one asked for, it is what comes out.
 func TestErrorIsTheOnePredicted(t *testing.T) {
 	r := rand.New(rand.NewPCG(13, 14))
 	for _, n := range [][3]int{{64, 1, 1}, {32, 32, 1}, {16, 16, 16}} {
-		for _, oversampling := range []float64{1.25, 1.5, 2} {
-			for width := MinWidth; width <= MaxWidth; width++ {
-				p, err := NewPlan[float64](n, Settings{width, oversampling})
-				if err != nil {
-					t.Fatal(err)
-				}
-				points := scattered(r, n, 200)
-				values := white[float64](r, len(points)*2)
-				image, err := p.Adjoint(points, values, 1)
-				if err != nil {
-					t.Fatal(err)
-				}
-				got, want := relative(image, slowAdjoint(n, points, values, 1)), Error(dimensions(n), width, oversampling)
-				// 200 random points scatter by about a tenth; the polynomials add 2 %, coarse images sample the rim more.
-				if !(got <= 1.6*want && got >= 0.6*want) {
-					t.Errorf("%v width %d oversampling %g: relative error %.3g, predicted %.3g", n, width, oversampling, got, want)
-				}
+		points := scattered(r, n, 200)
+		values := white[float64](r, len(points)*2)
+		slow := slowAdjoint(n, points, values, 1)
+		for _, s := range everySetting() {
+			p, err := NewPlan[float64](n, s)
+			if err != nil {
+				t.Fatal(err)
+			}
+			image, err := p.Adjoint(points, values, 1)
+			if err != nil {
+				t.Fatal(err)
+			}
+			got, want := relative(image, slow), Error(dimensions(n), s.Width, s.Oversampling)
+			// 200 random points scatter by about a tenth; the polynomials add 2 %, coarse images sample the rim more.
+			if !(got <= 1.6*want && got >= 0.6*want) {
+				t.Errorf("%v %+v: relative error %.3g, predicted %.3g", n, s, got, want)
 			}
 		}
 	}

@@ -16,13 +16,13 @@ func (g *Grid[F]) Image(image []F, progress func(float64)) {
 	x, y, z := &g.plan.axes[0], &g.plan.axes[1], &g.plan.axes[2]
 	report := steps(progress, y.length+2*z.n)
 	for iy := range y.length {
-		if z.kernel != nil {
+		if z.n > 1 {
 			g.shrink(2, iy)
 		}
 		report()
 	}
 	for iz := range z.n {
-		if y.kernel != nil {
+		if y.n > 1 {
 			g.shrink(1, iz)
 		}
 		report()
@@ -47,13 +47,13 @@ func (g *Grid[F]) Load(image []F, progress func(float64)) {
 		report()
 	}
 	for iz := range z.n {
-		if y.kernel != nil {
+		if y.n > 1 {
 			g.grow(1, iz)
 		}
 		report()
 	}
 	for iy := range y.length {
-		if z.kernel != nil {
+		if z.n > 1 {
 			g.grow(2, iy)
 		}
 		report()
@@ -131,7 +131,7 @@ func (g *Grid[F]) cellsAt(along, cell, other, from, to int) []F {
 // shrinkRows transforms the rows fromY..toY-1 of plane iz along x into the image. Cells past the period are folded back.
 func (g *Grid[F]) shrinkRows(image []F, iz, fromY, toY int, x *axis) {
 	pairs := 2 * g.lanes
-	if x.kernel == nil {
+	if x.n == 1 {
 		for iy := fromY; iy < toY; iy++ {
 			copy(image[(iz*g.plan.axes[1].n+iy)*pairs:][:pairs], g.cellsAt(1, iy, iz, 0, pairs))
 		}
@@ -158,7 +158,7 @@ func (g *Grid[F]) shrinkRows(image []F, iz, fromY, toY int, x *axis) {
 // those at its start.
 func (g *Grid[F]) growRows(image []F, iz, fromY, toY int, x *axis) {
 	pairs := 2 * g.lanes
-	if x.kernel == nil {
+	if x.n == 1 {
 		for iy := fromY; iy < toY; iy++ {
 			copy(g.cellsAt(1, iy, iz, 0, pairs), image[(iz*g.plan.axes[1].n+iy)*pairs:][:pairs])
 		}
