@@ -147,4 +147,6 @@ func compareMAT(t *testing.T, file string, arrays []acquisition.Array, want map[
 }
 
 // sameText ignores the spaces and NULs that fill a row up: scipy cuts none, NumPy text cuts NULs.
-func sameText(a, b string) bool { return strings.TrimRight(a, " \x00") == strings.TrimRight(b, " \x00") }
+func sameText(a, b string) bool {
+	return strings.TrimRight(a, " \x00") == strings.TrimRight(b, " \x00")
+}

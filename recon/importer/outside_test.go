@@ -23,7 +23,7 @@ func python(t *testing.T, script string, args ...string) []byte {
 	t.Helper()
 	out, err := exec.Command("/usr/bin/python3", append([]string{"-c", script}, args...)...).CombinedOutput()
 	if err != nil {
-		t.Fatalf("python: %v\n%s\nto install what is needed: apt-get install python3-numpy python3-scipy", err, out)
+		t.Fatalf("python: %v\n%s\nto install what is needed: apt-get install python3-numpy python3-scipy python3-nibabel", err, out)
 	}
 	return out
 }
