@@ -8,11 +8,10 @@ import (
 // edgesOf returns the edges of n equal bins that take in all values but the outermost thousandth on either side, so that
 // a few wild voxels do not squeeze the rest together, and the values named in also.
 func edgesOf(n int, values []float64, also ...float64) []float64 {
-	sorted := slices.Clone(values)
-	slices.Sort(sorted)
-	low, high := sorted[len(sorted)/1000], sorted[len(sorted)-1-len(sorted)/1000]
-	for _, v := range also {
-		low, high = math.Min(low, v), math.Max(high, v)
+	v := sorted(values)
+	low, high := v[len(v)/1000], v[len(v)-1-len(v)/1000]
+	for _, edge := range also {
+		low, high = math.Min(low, edge), math.Max(high, edge)
 	}
 	return evenEdges(n, low, high)
 }
@@ -38,4 +37,20 @@ func binOf(edges []float64, x float64) int {
 		return -1
 	}
 	return min(n-1, int((x-low)/(high-low)*float64(n)))
+}
+
+func sorted(values []float64) []float64 {
+	out := slices.Clone(values)
+	slices.Sort(out)
+	return out
+}
+
+// quantile interpolates linearly between the order statistics of sorted values, at q·(n-1).
+func quantile(v []float64, q float64) float64 {
+	at := q * float64(len(v)-1)
+	i := int(at)
+	if i+1 >= len(v) {
+		return v[len(v)-1]
+	}
+	return v[i] + (at-float64(i))*(v[i+1]-v[i])
 }
