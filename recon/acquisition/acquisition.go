@@ -137,10 +137,13 @@ func (a *Acquisition) Recovers() bool {
 	return a.Sequence == InversionRecovery || a.Sequence == SaturationRecovery
 }
 
-// RateName returns "R1" for a recovery and "R2" for a decay over the delay axis.
+// RateName returns "R1" for a recovery, "R2" for a decay of echoes and "R2*" for a free decay.
 func (a *Acquisition) RateName() string {
-	if a.Recovers() {
+	switch {
+	case a.Recovers():
 		return "R1"
+	case a.Sequence == FreeDecay:
+		return "R2*"
 	}
 	return "R2"
 }

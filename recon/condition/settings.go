@@ -33,8 +33,8 @@ type Settings struct {
 	// k-space they would have given are taken from the others by the resampler, which knows that the object is finite.
 	DeadSamples int `json:"deadSamples"`
 
-	ExcludeShots  []int `json:"excludeShots"`  // shots that do not enter the image, zero-based
-	ExcludeDelays []int `json:"excludeDelays"` // delays that are not used, zero-based
+	ExcludeShots  []int `json:"excludeShots,omitempty"`  // shots that do not enter the image, zero-based
+	ExcludeDelays []int `json:"excludeDelays,omitempty"` // delays that are not used, zero-based
 }
 
 // Choice is a named way to do one step.

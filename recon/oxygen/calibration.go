@@ -10,7 +10,7 @@ import (
 // Calibration is the line between rate and pO2 of one probe. It holds at one temperature and one probe concentration;
 // the optional coefficients carry it to others. A zero among the optional numbers means: not known, or not used.
 type Calibration struct {
-	Rate              string  `json:"rate"`              // "R1" or "R2": the rate it was measured for
+	Rate              string  `json:"rate"`              // "R1", "R2" or "R2*": the rate it was measured for
 	ZeroPerUS         float64 `json:"zeroPerUS"`         // R0, the rate without oxygen, in 1/µs
 	SlopePerUSPerTorr float64 `json:"slopePerUSPerTorr"` // in 1/µs/torr
 
@@ -33,8 +33,8 @@ type Calibration struct {
 // Check returns a fault when the calibration gives no pO2: an unknown rate, a rate at zero oxygen that is negative, a
 // slope that is not positive, or optional numbers that contradict each other.
 func (c Calibration) Check() error {
-	if c.Rate != "R1" && c.Rate != "R2" {
-		return fault.New(fault.BadSetting, "calibration.rate", "%q is not a rate; use R1 or R2", c.Rate)
+	if c.Rate != "R1" && c.Rate != "R2" && c.Rate != "R2*" {
+		return fault.New(fault.BadSetting, "calibration.rate", "%q is not a rate; use R1, R2 or R2*", c.Rate)
 	}
 	if !(c.ZeroPerUS >= 0) || math.IsInf(c.ZeroPerUS, 0) {
 		return fault.New(fault.BadSetting, "calibration.zeroPerUS", "%g /µs; the rate without oxygen is finite and not negative", c.ZeroPerUS)

@@ -3,6 +3,7 @@ package recipe
 import (
 	"torrloom/recon/condition"
 	"torrloom/recon/sampling"
+	"torrloom/recon/singlepoint"
 	"torrloom/recon/volume"
 )
 
@@ -12,13 +13,14 @@ type Setting struct {
 	Group   string   `json:"group"` // heading of the form
 	Label   string   `json:"label"`
 	Unit    string   `json:"unit"`
-	Kind    string   `json:"kind"` // "number", "integer" or "choice"
+	Kind    string   `json:"kind"` // "number", "integer", "choice" or "list" (of integers)
 	Min     float64  `json:"min"`
 	Max     float64  `json:"max"`
 	Step    float64  `json:"step"` // of a form's arrows, not a restriction
 	Choices []Choice `json:"choices"`
 	Help    string   `json:"help"`
-	Stage   string   `json:"stage"` // first stage that is redone: "measure", "reconstruct", "fit" or "derive"
+	Methods []string `json:"methods"` // reconstruction methods that use it; empty: all
+	Stage   string   `json:"stage"`   // first stage that is redone: "measure", "reconstruct", "fit" or "derive"
 }
 
 // Choice is one value of a setting of kind "choice".
@@ -30,8 +32,15 @@ type Choice struct {
 
 // Methods are the reconstructions, in the order of a form. Each has its kernel in session.
 var Methods = []Choice{
-	{"back-projection", "back-projection", "filtered back-projection: |k| (2D) or k² (3D) times the window, smeared back with linear interpolation"},
+	{"back-projection", "back-projection", "filtered back-projection: |k| (2D) or k² (3D) times the window, smeared back"},
+	{"gridding", "gridding", "the weighted sum over all k-space samples, made fast by a Kaiser-Bessel kernel; same sum as back-projection, no interpolation of projections"},
+	{"single-point", "single-point", "for single-point encoding: each sample time is its own k-space, all brought to one field of view"},
 }
+
+var (
+	weighing = []string{"gridding"}
+	single   = []string{"single-point"}
+)
 
 // Catalogue returns every setting, in the order of the form.
 func Catalogue() []Setting {
@@ -46,17 +55,55 @@ func Catalogue() []Setting {
 			Help: "Weight over k up to the cutoff. Smoother windows trade resolution for noise and ringing."},
 		{Path: "reconstruction.cutoff", Group: "Reconstruction", Label: "Cutoff", Unit: "of k_max", Kind: "number", Min: 0.05, Max: 1, Step: 0.05, Stage: "reconstruct",
 			Help: "Where the window ends, as a fraction of the largest k that every spoke reaches."},
+		{Path: "reconstruction.density", Group: "Reconstruction", Label: "Density weights", Kind: "choice", Choices: densityChoices(), Methods: weighing, Stage: "reconstruct",
+			Help: "How much of k-space each sample stands for."},
+		{Path: "reconstruction.tolerance", Group: "Reconstruction", Label: "Kernel tolerance", Kind: "number", Min: 1e-6, Max: 0.1, Step: 0.001, Methods: weighing, Stage: "reconstruct",
+			Help: "Relative error of the gridding kernel; its width follows from it."},
+		{Path: "reconstruction.oversampling", Group: "Reconstruction", Label: "Grid oversampling", Kind: "number", Min: 1.25, Max: 2, Step: 0.25, Methods: weighing, Stage: "reconstruct",
+			Help: "Cells of the gridding grid per voxel and axis. More memory, narrower kernel."},
+		{Path: "singlePoint.axis", Group: "Single point", Label: "Images along", Kind: "choice", Choices: choicesOf(singlepoint.Axes), Methods: single, Stage: "measure",
+			Help: "What the rate is fitted over."},
+		{Path: "singlePoint.firstUS", Group: "Single point", Label: "First sample time", Unit: "µs", Kind: "number", Min: 0, Max: 1e4, Step: 0.01, Methods: single, Stage: "measure",
+			Help: "Earliest sample time used. Early times have a large field of view and a coarse resolution."},
+		{Path: "singlePoint.lastUS", Group: "Single point", Label: "Last sample time", Unit: "µs", Kind: "number", Min: 0, Max: 1e4, Step: 0.01, Methods: single, Stage: "measure",
+			Help: "Latest sample time used. Late times resolve more, but their field of view may be smaller than the object, which then folds."},
+		{Path: "singlePoint.count", Group: "Single point", Label: "Sample times", Kind: "integer", Min: 1, Max: 256, Step: 1, Methods: single, Stage: "measure",
+			Help: "How many sample times are used, evenly between the first and the last."},
+		{Path: "singlePoint.resolution", Group: "Single point", Label: "Resolution", Kind: "choice", Choices: choicesOf(singlepoint.Resolutions), Methods: single, Stage: "measure",
+			Help: "Whether all sample times end at one k_max."},
 		{Path: "conditioning.offset", Group: "Conditioning", Label: "Offset", Kind: "choice", Choices: choicesOf(condition.Offsets), Stage: "measure",
 			Help: "How the receiver's constant offset is found. An offset makes a spot at the gradient centre."},
 		{Path: "conditioning.phase", Group: "Conditioning", Label: "Phase", Kind: "choice", Choices: choicesOf(condition.Phases), Stage: "measure",
 			Help: "How the receiver phase is chosen. Signs along the delays are kept."},
 		{Path: "conditioning.timeShiftSamples", Group: "Conditioning", Label: "Shift of time zero", Unit: "samples", Kind: "number", Min: -1e6, Max: 1e6, Step: 0.1, Stage: "measure",
 			Help: "Added to the file's time zero. A wrong time zero twists the phase across each projection."},
+		{Path: "conditioning.shotPhase", Group: "Conditioning", Label: "Phase of single shots", Kind: "choice", Choices: choicesOf(condition.ShotPhases), Stage: "measure",
+			Help: "Whether every shot is turned by its own phase."},
+		{Path: "conditioning.shotTime", Group: "Conditioning", Label: "Time zero of single shots", Kind: "choice", Choices: choicesOf(condition.ShotTimes), Stage: "measure",
+			Help: "Whether every shot has its own echo centre."},
+		{Path: "conditioning.quadratureGain", Group: "Conditioning", Label: "Quadrature gain", Kind: "number", Min: -0.9, Max: 9, Step: 0.01, Stage: "measure",
+			Help: "Excess gain of the second channel over the first."},
+		{Path: "conditioning.quadratureSkewDeg", Group: "Conditioning", Label: "Quadrature skew", Unit: "°", Kind: "number", Min: -80, Max: 80, Step: 0.5, Stage: "measure",
+			Help: "By how much the two channels miss 90°."},
+		{Path: "conditioning.phaseDriftDeg", Group: "Conditioning", Label: "Phase drift", Unit: "°", Kind: "number", Min: -36000, Max: 36000, Step: 1, Stage: "measure",
+			Help: "Phase of the last shot less that of the first."},
+		{Path: "conditioning.frequencyKHz", Group: "Conditioning", Label: "Frequency", Unit: "kHz", Kind: "number", Min: -1e5, Max: 1e5, Step: 1, Stage: "measure",
+			Help: "Frequency of the signal off the receiver's, in the middle of the acquisition. It shifts every projection."},
+		{Path: "conditioning.frequencyDriftKHz", Group: "Conditioning", Label: "Frequency drift", Unit: "kHz", Kind: "number", Min: -1e5, Max: 1e5, Step: 1, Stage: "measure",
+			Help: "Frequency of the last shot less that of the first."},
+		{Path: "conditioning.amplitudeDrift", Group: "Conditioning", Label: "Amplitude drift", Kind: "number", Min: -1.8, Max: 1.8, Step: 0.01, Stage: "measure",
+			Help: "Signal of the last shot less that of the first, over the signal in the middle."},
+		{Path: "conditioning.deadSamples", Group: "Conditioning", Label: "Dead samples", Kind: "integer", Min: 0, Max: 1e6, Step: 1, Stage: "measure",
+			Help: "Samples after k = 0 that are not used, because the receiver was not ready."},
+		{Path: "conditioning.excludeShots", Group: "Conditioning", Label: "Leave out shots", Kind: "list", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
+			Help: "Numbers of shots, from 0, that do not enter the image; weights are made anew from the others."},
+		{Path: "conditioning.excludeDelays", Group: "Conditioning", Label: "Leave out delays", Kind: "list", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
+			Help: "Numbers of delays, from 0, that are not used."},
 		{Path: "rates.minPerUS", Group: "Rates", Label: "Slowest rate", Unit: "1/µs", Kind: "number", Min: 0, Max: 1e4, Step: 0.01, Stage: "fit",
 			Help: "Lower end of the rates that can be an answer. 0: from the delays."},
 		{Path: "rates.maxPerUS", Group: "Rates", Label: "Fastest rate", Unit: "1/µs", Kind: "number", Min: 0, Max: 1e4, Step: 0.1, Stage: "fit",
 			Help: "Upper end of the rates that can be an answer. 0: from the delays."},
-		{Path: "calibration.rate", Group: "Calibration", Label: "Rate", Kind: "choice", Choices: []Choice{{"R1", "R1", "from recovery delays"}, {"R2", "R2", "from decay delays"}}, Stage: "derive",
+		{Path: "calibration.rate", Group: "Calibration", Label: "Rate", Kind: "choice", Choices: []Choice{{"R1", "R1", "from recovery delays"}, {"R2", "R2", "from decay delays"}, {"R2*", "R2*", "from a free decay"}}, Stage: "derive",
 			Help: "The rate that the calibration was measured with. It must be the rate these data give."},
 		{Path: "calibration.zeroPerUS", Group: "Calibration", Label: "Rate at zero oxygen", Unit: "1/µs", Kind: "number", Min: 0, Max: 1e3, Step: 0.001, Stage: "derive",
 			Help: "Rate of the probe without oxygen, from your calibration."},
@@ -87,6 +134,14 @@ func Catalogue() []Setting {
 		{Path: "mask.amplitudeFraction", Group: "Mask", Label: "Mask level", Unit: "of strongest", Kind: "number", Min: 0, Max: 1, Step: 0.05, Stage: "derive",
 			Help: "Voxels whose amplitude at the reference delay is below this fraction of the strongest are left out."},
 	}
+}
+
+func densityChoices() []Choice {
+	var out []Choice
+	for _, d := range sampling.Densities {
+		out = append(out, Choice{d.Name, d.Label, d.Help})
+	}
+	return out
 }
 
 func windowChoices() []Choice {

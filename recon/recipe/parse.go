@@ -6,6 +6,7 @@ import (
 	"errors"
 	"math"
 	"reflect"
+	"slices"
 	"sort"
 	"strings"
 
@@ -35,7 +36,10 @@ func Parse(text []byte, base Recipe) (Recipe, error) {
 	return out, out.Check()
 }
 
+// clone returns a copy that shares no memory with r.
 func (r Recipe) clone() Recipe {
+	r.Conditioning.ExcludeShots = slices.Clone(r.Conditioning.ExcludeShots)
+	r.Conditioning.ExcludeDelays = slices.Clone(r.Conditioning.ExcludeDelays)
 	if r.Calibration != nil {
 		c := *r.Calibration
 		r.Calibration = &c
@@ -68,6 +72,8 @@ func plainType(t reflect.Type) string {
 		return "a number"
 	case reflect.String:
 		return "a text in quotes"
+	case reflect.Slice:
+		return "a list in brackets"
 	}
 	return "an object in braces"
 }
@@ -171,6 +177,8 @@ func (s Setting) check(value any) error {
 	switch v := value.(type) {
 	case string:
 		return s.checkChoice(v)
+	case []int:
+		return s.checkList(v)
 	case int:
 		number = float64(v)
 	case float64:
@@ -178,6 +186,15 @@ func (s Setting) check(value any) error {
 	}
 	if !(number >= s.Min && number <= s.Max) || math.IsInf(number, 0) {
 		return fault.New(fault.BadSetting, "recipe "+s.Path, "%g %s; use %g to %g", number, s.Unit, s.Min, s.Max)
+	}
+	return nil
+}
+
+func (s Setting) checkList(values []int) error {
+	for _, v := range values {
+		if float64(v) < s.Min || float64(v) > s.Max {
+			return fault.New(fault.BadSetting, "recipe "+s.Path, "%d; use %g to %g", v, s.Min, s.Max)
+		}
 	}
 	return nil
 }

@@ -11,6 +11,7 @@ import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/condition"
 	"torrloom/recon/oxygen"
+	"torrloom/recon/singlepoint"
 )
 
 // Version is the format version of a recipe.
@@ -19,18 +20,12 @@ const Version = 1
 // Recipe is the whole chain. A nil Calibration means that the rate map is made and the pO2 map is not.
 type Recipe struct {
 	Recipe         int                 `json:"recipe"`
-	Conditioning   Conditioning        `json:"conditioning"`
+	Conditioning   condition.Settings  `json:"conditioning"`
 	Reconstruction Reconstruction      `json:"reconstruction"`
+	SinglePoint    SinglePoint         `json:"singlePoint"`
 	Rates          Rates               `json:"rates"`
 	Calibration    *oxygen.Calibration `json:"calibration,omitempty"`
 	Mask           Mask                `json:"mask"`
-}
-
-// Conditioning prepares the traces.
-type Conditioning struct {
-	Offset           string  `json:"offset"`           // row of condition.Offsets
-	Phase            string  `json:"phase"`            // row of condition.Phases
-	TimeShiftSamples float64 `json:"timeShiftSamples"` // added to the file's time zero
 }
 
 // Reconstruction turns conditioned spokes into one image per delay.
@@ -39,7 +34,19 @@ type Reconstruction struct {
 	Matrix        int     `json:"matrix"`
 	FieldOfViewMM float64 `json:"fieldOfViewMM"`
 	Window        string  `json:"window"`
-	Cutoff        float64 `json:"cutoff"` // fraction of k_max
+	Cutoff        float64 `json:"cutoff"`       // fraction of k_max
+	Density       string  `json:"density"`      // row of sampling.Densities; methods that weigh samples
+	Tolerance     float64 `json:"tolerance"`    // relative error of the gridding kernel
+	Oversampling  float64 `json:"oversampling"` // of the gridding grid
+}
+
+// SinglePoint chooses the sample times of single-point data and what the images run along.
+type SinglePoint struct {
+	Axis       string  `json:"axis"`    // row of singlepoint.Axes
+	FirstUS    float64 `json:"firstUS"` // sample times since k = 0
+	LastUS     float64 `json:"lastUS"`
+	Count      int     `json:"count"`      // images or, along the delay, sample times averaged
+	Resolution string  `json:"resolution"` // row of singlepoint.Resolutions
 }
 
 // Rates bounds the rate fit. Zero means: from the delays.
@@ -57,27 +64,58 @@ type Mask struct {
 //
 // The field of view leaves a tenth around the object. The matrix is the smallest of a few round sizes whose voxel is at
 // most two thirds of the nominal resolution 1/(2 k_max). The calibration is the file's own, if it carries one.
+//
+// Of single-point data the sample times are those whose field of view holds the object, and the images run along them
+// unless there are several delays.
 func Defaults(a *acquisition.Acquisition, extentMM float64) Recipe {
-	conditioning := condition.Defaults()
-	field := math.Ceil(math.Min(1.1*extentMM, a.AliasFreeMM()))
-	return Recipe{
+	r := Recipe{
 		Recipe:       Version,
-		Conditioning: Conditioning{Offset: conditioning.Offset, Phase: conditioning.Phase},
-		Reconstruction: Reconstruction{Method: "back-projection", Window: "hann", Cutoff: 1, FieldOfViewMM: field,
-			Matrix: defaultMatrix(a, field)},
+		Conditioning: condition.Defaults(),
+		Reconstruction: Reconstruction{Method: "back-projection", Window: "hann", Cutoff: 1, Density: "solid-angle",
+			Tolerance: 1e-3, Oversampling: 1.5},
+		SinglePoint: SinglePoint{Axis: "sample-time", Count: 12, Resolution: "common"},
 		Calibration: fileCalibration(a),
 		Mask:        Mask{AmplitudeFraction: 0.2},
 	}
+	resolution := 0.0
+	if a.Encoding == acquisition.SinglePoint {
+		r.Reconstruction.FieldOfViewMM = math.Ceil(1.1 * extentMM)
+		resolution = r.singlePointDefaults(a, extentMM)
+	} else {
+		r.Reconstruction.FieldOfViewMM = math.Ceil(math.Min(1.1*extentMM, a.AliasFreeMM()))
+		resolution = 1 / (2 * a.SmallestKMax())
+	}
+	r.Reconstruction.Matrix = defaultMatrix(a.Dim, r.Reconstruction.FieldOfViewMM, resolution)
+	return r
 }
 
-func defaultMatrix(a *acquisition.Acquisition, fieldOfViewMM float64) int {
+// singlePointDefaults sets method, window and sample times, and returns the resolution that the first of them has.
+func (r *Recipe) singlePointDefaults(a *acquisition.Acquisition, extentMM float64) (resolutionMM float64) {
+	r.Reconstruction.Method, r.Reconstruction.Window = "single-point", "none"
+	if a.Delays > 1 {
+		r.SinglePoint.Axis, r.SinglePoint.Count = "delay", 8
+	}
+	coverage, err := singlepoint.Describe(a, 0)
+	if err != nil {
+		return extentMM // the same fault follows when the images are planned
+	}
+	covering := coverage.Covering(extentMM)
+	if len(covering) == 0 {
+		return extentMM
+	}
+	first, last := coverage.Times[covering[0]], coverage.Times[covering[len(covering)-1]]
+	// The earliest third resolves least; all images are as sharp as the earliest.
+	r.SinglePoint.FirstUS, r.SinglePoint.LastUS = math.Max(first.TimeUS, last.TimeUS/3), last.TimeUS
+	return last.ResolutionMM
+}
+
+func defaultMatrix(dim int, fieldOfViewMM, resolutionMM float64) int {
 	sizes := []int{32, 48, 64}
-	if a.Dim == 2 {
+	if dim == 2 {
 		sizes = []int{64, 96, 128, 192, 256}
 	}
-	resolution := 1 / (2 * a.SmallestKMax())
 	for _, n := range sizes {
-		if fieldOfViewMM/float64(n) <= resolution*2/3 {
+		if fieldOfViewMM/float64(n) <= resolutionMM*2/3 {
 			return n
 		}
 	}

@@ -107,7 +107,7 @@ func TestFaultyRecipesNameTheKey(t *testing.T) {
 		`{"reconstruction":{"cutoff":1.2}}`:                        `recipe reconstruction.cutoff: 1.2`,
 		`{"reconstruction":{"method":"magic"}}`:                    `recipe reconstruction.method: method "magic"`,
 		`{"calibration":{"slopePerUSPerTorr":0}}`:                  `recipe calibration.slopePerUSPerTorr: 0 /µs/torr; a positive slope`,
-		`{"calibration":{"rate":"R3"}}`:                            `recipe calibration.rate: rate "R3" is not known; use R1 or R2`,
+		`{"calibration":{"rate":"R3"}}`:                            `recipe calibration.rate: rate "R3" is not known; use R1, R2 or R2*`,
 		`{"rates":{"minPerUS":2,"maxPerUS":1}}`:                    `recipe rates.maxPerUS: 1 is not above`,
 		`{"recipe":2}`:                                             `recipe recipe: format 2`,
 		"{\"recipe\":1,\n\"mask\":{\"amplitudeFraction\":0.2,}\n}": `recipe: line 2 is not JSON`,

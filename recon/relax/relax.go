@@ -45,7 +45,7 @@ type Curve interface {
 }
 
 // Models lists every model. The first row of a sequence is the one used unless a recipe names another.
-var Models = []Model{inversionRecovery, saturationRecovery, echoDecay}
+var Models = []Model{inversionRecovery, saturationRecovery, echoDecay, freeDecay}
 
 // Named returns the model with that name.
 //

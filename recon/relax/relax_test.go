@@ -440,7 +440,7 @@ func TestDelaysAndSettingsWithoutAnAnswerAreRefused(t *testing.T) {
 	if _, err := Named("stretched"); err == nil {
 		t.Error("an unknown model was accepted")
 	}
-	if _, err := For(acquisition.FreeDecay); err == nil {
+	if _, err := For("no such sequence"); err == nil {
 		t.Error("a sequence without a model was accepted")
 	}
 }

@@ -3,19 +3,18 @@ package session
 import (
 	"math"
 
-	"torrloom/recon/acquisition"
 	"torrloom/recon/volume"
 )
 
-// MapOf names a quantity of the chain and its unit: "pO2", "rate" or "amplitude".
-func MapOf(quantity string, a *acquisition.Acquisition, g volume.Grid, values []float32) volume.Map {
+// MapOf names a quantity of the chain and its unit: "pO2", "rate" (whose own name is given) or "amplitude".
+func MapOf(quantity, rateName string, g volume.Grid, values []float32) volume.Map {
 	m := volume.Map{Name: quantity, Unit: "torr", Grid: g, Values: values}
 	switch quantity {
 	case "rate":
-		m.Name, m.Unit = a.RateName(), "1/us"
+		m.Name, m.Unit = rateName, "1/us"
 	case "amplitude":
 		m.Unit = "1/mm3"
-		if a.Dim == 2 {
+		if g.Dim() == 2 {
 			m.Unit = "1/mm2"
 		}
 	}

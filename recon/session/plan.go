@@ -8,6 +8,8 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"encoding/json"
+	"math"
+	"slices"
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/condition"
@@ -28,9 +30,9 @@ type Plan struct {
 	VoxelMM         [3]float64    `json:"voxelMM"`
 	OriginMM        [3]float64    `json:"originMM"` // centre of voxel (0,0,0)
 	MemoryBytes     int64         `json:"memoryBytes"`
-	ReconstructJobs [][]int       `json:"reconstructJobs"` // delay indices of each job
+	Frames          Frames        `json:"frames"`
+	ReconstructJobs [][]int       `json:"reconstructJobs"` // frame indices of each job
 	FitJobs         [][2]int      `json:"fitJobs"`         // voxel range [from, to) of each job
-	Reference       int           `json:"referenceDelay"`
 	Warnings        []string      `json:"warnings"`
 }
 
@@ -50,38 +52,42 @@ func NewPlan(a *acquisition.Acquisition, dataHash string, extentMM float64, r re
 	if err := r.Check(); err != nil {
 		return nil, err
 	}
-	if r.Calibration != nil && r.Calibration.Rate != a.RateName() {
-		return nil, fault.New(fault.BadSetting, "recipe calibration.rate", "the calibration is for %s, these %s data give %s; enter a calibration of %s or remove it",
-			r.Calibration.Rate, a.Sequence, a.RateName(), a.RateName())
+	f, err := FramesOf(a, r)
+	if err != nil {
+		return nil, err
 	}
-	g, err := volume.Cube(a.Dim, r.Reconstruction.Matrix, r.Reconstruction.FieldOfViewMM)
+	if r.Calibration != nil && r.Calibration.Rate != f.RateName {
+		return nil, fault.New(fault.BadSetting, "recipe calibration.rate", "the calibration is for %s, these %s data give %s; enter a calibration of %s or remove it",
+			r.Calibration.Rate, a.Sequence, f.RateName, f.RateName)
+	}
+	g, err := gridOf(a, r)
 	if err != nil {
 		return nil, err
 	}
 	workers = max(1, workers)
-	p := &Plan{Recipe: r, Keys: keysOf(dataHash, r), N: g.N, VoxelMM: g.VoxelMM, Reference: a.ReferenceDelay(), Warnings: planWarnings(a, r)}
+	p := &Plan{Recipe: r, Keys: keysOf(dataHash, r), N: g.N, VoxelMM: g.VoxelMM, Frames: f, Warnings: planWarnings(a, r, f)}
 	for axis := range 3 {
 		p.OriginMM[axis] = g.MM(axis, 0)
 	}
-	p.ReconstructJobs = splitDelays(a.Delays, workers)
+	p.ReconstructJobs = splitFrames(len(f.TimeUS), workers)
 	p.FitJobs = splitVoxels(g.Voxels(), workers)
-	p.MemoryBytes = estimate(a, r, g, extentMM, largest(p.ReconstructJobs))
+	p.MemoryBytes = estimate(a, r, g, extentMM, len(f.TimeUS), largest(p.ReconstructJobs))
 	if p.MemoryBytes > MemoryLimit {
-		return nil, fault.New(fault.TooLarge, "recipe reconstruction.matrix", "%dx%dx%d voxels at %d delays need about %.1f GiB per worker, the limit is %.1f GiB; lower the matrix size",
-			g.N[0], g.N[1], g.N[2], a.Delays, float64(p.MemoryBytes)/(1<<30), float64(MemoryLimit)/(1<<30))
+		return nil, fault.New(fault.TooLarge, "recipe reconstruction.matrix", "%dx%dx%d voxels in %d images need about %.1f GiB per worker, the limit is %.1f GiB; lower the matrix size",
+			g.N[0], g.N[1], g.N[2], len(f.TimeUS), float64(p.MemoryBytes)/(1<<30), float64(MemoryLimit)/(1<<30))
 	}
 	return p, nil
 }
 
-// splitDelays deals the delays out to at most workers jobs, in order and in pairs: two delays share one complex lane, so
-// that a pair is the unit of work, and the rounding of a delay must not depend on how many workers there are.
-func splitDelays(delays, workers int) [][]int {
-	pairs := (delays + 1) / 2
+// splitFrames deals the frames out to at most workers jobs, in order and in pairs: two images share one complex lane, so
+// that a pair is the unit of work, and the rounding of an image must not depend on how many workers there are.
+func splitFrames(frames, workers int) [][]int {
+	pairs := (frames + 1) / 2
 	jobs := min(pairs, workers)
 	out := make([][]int, jobs)
-	for d := range delays {
-		j := d / 2 * jobs / pairs
-		out[j] = append(out[j], d)
+	for f := range frames {
+		j := f / 2 * jobs / pairs
+		out[j] = append(out[j], f)
 	}
 	return out
 }
@@ -106,18 +112,31 @@ func splitVoxels(voxels, workers int) [][2]int {
 }
 
 // estimate returns the bytes one engine needs for its largest job: the signal, the spokes, the growing and the finished
-// images of its delays, and once the images of all delays for the fit.
-func estimate(a *acquisition.Acquisition, r recipe.Recipe, g volume.Grid, extentMM float64, delays int) int64 {
-	cut, _ := kCut(a, r)
-	geometry := condition.Plan(a, &condition.Constants{ExtentMM: extentMM}, r.Reconstruction.FieldOfViewMM, cut)
-	images := int64(g.Voxels()) * int64(delays) * 4
-	fit := int64(g.Voxels()) * int64(4*a.Delays+4*6)
-	return a.Bytes() + max(geometry.Bytes(a, delays)+2*images, fit)
+// images of its frames, and once the images of all frames for the fit.
+func estimate(a *acquisition.Acquisition, r recipe.Recipe, g volume.Grid, extentMM float64, frames, inJob int) int64 {
+	images := int64(g.Voxels()) * int64(inJob) * 4
+	work := 2 * images
+	if a.Encoding == acquisition.Spoke {
+		cut, _ := kCut(a, r)
+		geometry := condition.Plan(a, &condition.Constants{ExtentMM: extentMM}, r.Reconstruction.FieldOfViewMM, cut)
+		work += geometry.Bytes(a, inJob)
+	}
+	if slices.Contains(gridders, r.Reconstruction.Method) {
+		work += int64(float64(images) * math.Pow(r.Reconstruction.Oversampling, float64(a.Dim)))
+	}
+	fit := int64(g.Voxels()) * int64(4*frames+4*6)
+	return a.Bytes() + max(work, fit)
 }
+
+// gridders are the methods that hold an oversampled grid beside the images.
+var gridders = []string{"gridding"}
 
 func keysOf(dataHash string, r recipe.Recipe) Keys {
 	var k Keys
-	k.Measure = hash(dataHash, r.Conditioning)
+	k.Measure = hash(dataHash, r.Conditioning, r.SinglePoint)
+	if r.Reconstruction.Method == singlePointMethod {
+		k.Measure = hash(k.Measure, r.Reconstruction) // windows and noise of single-point images are planned on their grid
+	}
 	k.Reconstruct = hash(k.Measure, r.Reconstruction)
 	k.Fit = hash(k.Reconstruct, r.Rates)
 	k.Derive = hash(k.Fit, r.Mask, r.Calibration)

@@ -6,7 +6,6 @@ import (
 	"time"
 
 	"torrloom/recon/acquisition"
-	"torrloom/recon/condition"
 	"torrloom/recon/fault"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
@@ -17,9 +16,10 @@ import (
 type Result struct {
 	Plan      *Plan
 	Grid      volume.Grid
-	Constants *condition.Constants
-	Images    [][]float32 // [delay][voxel]
-	NoiseSD   []float64   // [delay]
+	Facts     *Facts
+	Constants *Constants
+	Images    [][]float32 // [frame][voxel]
+	NoiseSD   []float64   // [frame]
 	Maps      *relax.Maps
 	Derived   *Derived
 	Warnings  []string
@@ -58,59 +58,59 @@ type runner struct {
 
 // measure finds the object first, since the default field of view follows from it.
 func (r *runner) measure(dataHash string, text []byte) error {
-	first, _, err := condition.Measure(r.a, condition.Defaults())
+	facts, err := Survey(r.a)
 	if err != nil {
 		return err
 	}
-	r.recipe = recipe.Defaults(r.a, first.ExtentMM)
+	r.recipe = facts.DefaultRecipe(r.a)
 	if text != nil {
 		if r.recipe, err = recipe.Parse(text, r.recipe); err != nil {
 			return err
 		}
 	}
-	if r.out.Plan, err = NewPlan(r.a, dataHash, first.ExtentMM, r.recipe, r.workers); err != nil {
+	if r.out.Plan, err = NewPlan(r.a, dataHash, facts.ExtentMM, r.recipe, r.workers); err != nil {
 		return err
 	}
 	c, warnings, err := Measure(r.a, r.recipe)
 	if err != nil {
 		return err
 	}
-	r.out.Constants, err = throughJSON(c)
-	r.out.Warnings = append(r.out.Plan.Warnings, warnings...)
+	r.out.Facts, r.out.Warnings = facts, append(r.out.Plan.Warnings, warnings...)
 	r.out.Grid = volume.Grid{N: r.out.Plan.N, VoxelMM: r.out.Plan.VoxelMM}
+	r.out.Constants, err = throughJSON(c)
 	return err
 }
 
 // throughJSON sends the constants the way the page sends them, so that both use the same numbers.
-func throughJSON(c *condition.Constants) (*condition.Constants, error) {
+func throughJSON(c *Constants) (*Constants, error) {
 	text, err := json.Marshal(c)
 	if err != nil {
 		return nil, err
 	}
-	var out condition.Constants
+	var out Constants
 	return &out, json.Unmarshal(text, &out)
 }
 
 func (r *runner) reconstruct() error {
 	voxels := r.out.Grid.Voxels()
-	r.out.Images = make([][]float32, r.a.Delays)
-	r.out.NoiseSD = make([]float64, r.a.Delays)
+	r.out.Images = make([][]float32, len(r.out.Plan.Frames.TimeUS))
+	r.out.NoiseSD = make([]float64, len(r.out.Plan.Frames.TimeUS))
 	jobs := r.out.Plan.ReconstructJobs
 	return r.beside(len(jobs), func(j int) error {
 		images, err := Reconstruct(r.a, r.recipe, r.out.Constants, jobs[j], nil)
 		if err != nil {
 			return err
 		}
-		for i, d := range jobs[j] {
-			r.out.Images[d] = images.Values[i*voxels : (i+1)*voxels]
-			r.out.NoiseSD[d] = images.NoiseSD[i]
+		for i, f := range jobs[j] {
+			r.out.Images[f] = images.Values[i*voxels : (i+1)*voxels]
+			r.out.NoiseSD[f] = images.NoiseSD[i]
 		}
 		return nil
 	})
 }
 
 func (r *runner) fit() error {
-	f, err := fitter(r.a, r.recipe, r.out.NoiseSD)
+	f, err := r.out.Plan.Frames.fitter(r.a, r.recipe, r.out.NoiseSD)
 	if err != nil {
 		return err
 	}
@@ -124,7 +124,7 @@ func (r *runner) fit() error {
 
 func (r *runner) derive() (err error) {
 	m := r.out.Maps
-	r.out.Derived, err = Derive(r.recipe, r.out.Images[r.out.Plan.Reference], m.Rate, m.RateSE, m.Status)
+	r.out.Derived, err = Derive(r.recipe, r.out.Images[r.out.Plan.Frames.Reference], m.Rate, m.RateSE, m.Status)
 	if err == nil {
 		r.out.Warnings = append(r.out.Warnings, r.out.Derived.Numbers.Warnings...)
 	}

@@ -5,31 +5,43 @@ import (
 	"math"
 
 	"torrloom/recon/acquisition"
-	"torrloom/recon/backproject"
 	"torrloom/recon/condition"
 	"torrloom/recon/fault"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
-	"torrloom/recon/sampling"
+	"torrloom/recon/singlepoint"
 	"torrloom/recon/volume"
 )
 
-// kernel makes the images of conditioned spokes, [delay][voxel], and is told the axis weights, the filter along a spoke
-// and where to report the fraction done.
-type kernel func(sp *condition.Spokes, g volume.Grid, axis, filter []float64, progress func(float64)) []float32
-
-// kernels holds the reconstruction behind every row of recipe.Methods.
-var kernels = map[string]kernel{
-	"back-projection": backproject.Images,
+// Constants are what the jobs of a run need to know about the whole acquisition. They travel as JSON: one of the two is
+// there, as the encoding asks.
+type Constants struct {
+	Spokes      *condition.Constants `json:",omitempty"`
+	SinglePoint *singlepoint.Plan    `json:",omitempty"`
 }
 
 // Measure returns the constants of the acquisition under a recipe, and warnings.
-func Measure(a *acquisition.Acquisition, r recipe.Recipe) (*condition.Constants, []string, error) {
-	return condition.Measure(a, conditioning(r))
+//
+// Errors: those of FramesOf, condition.Measure and singlepoint.Prepare.
+func Measure(a *acquisition.Acquisition, r recipe.Recipe) (*Constants, []string, error) {
+	if a.Encoding != acquisition.SinglePoint {
+		c, warnings, err := condition.Measure(a, r.Conditioning)
+		return &Constants{Spokes: c}, warnings, err
+	}
+	f, err := FramesOf(a, r)
+	if err != nil {
+		return nil, nil, err
+	}
+	g, err := gridOf(a, r)
+	if err != nil {
+		return nil, nil, err
+	}
+	p, warnings, err := singlepoint.Prepare(a, singlePointSettings(r), g, f.samples)
+	return &Constants{SinglePoint: p}, warnings, err
 }
 
-func conditioning(r recipe.Recipe) condition.Settings {
-	return condition.Settings{Offset: r.Conditioning.Offset, Phase: r.Conditioning.Phase, TimeShiftSamples: r.Conditioning.TimeShiftSamples}
+func gridOf(a *acquisition.Acquisition, r recipe.Recipe) (volume.Grid, error) {
+	return volume.Cube(a.Dim, r.Reconstruction.Matrix, r.Reconstruction.FieldOfViewMM)
 }
 
 // kCut returns where the window ends, in cycles/mm, and the limit that the voxels set. No method uses frequencies that
@@ -39,70 +51,61 @@ func kCut(a *acquisition.Acquisition, r recipe.Recipe) (cut, matrixLimit float64
 	return r.Reconstruction.Cutoff * math.Min(a.SmallestKMax(), matrixLimit), matrixLimit
 }
 
-// Images is the result of the reconstruct stage for some delays.
+// Images is the result of the reconstruct stage for some frames.
 type Images struct {
-	Values  []float32 // [delay][voxel]
-	NoiseSD []float64 // [delay] predicted SD of a voxel
+	Values  []float32 // [frame][voxel]
+	NoiseSD []float64 // [frame] predicted SD of a voxel
 }
 
-// Reconstruct returns the images of some delays. Progress, which may be nil, is told the fraction done.
+// Reconstruct returns the images of some frames. Progress, which may be nil, is told the fraction done.
 //
-// Errors: those of condition.Condition, sampling.AxisWeights and volume.Cube.
-func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Constants, delays []int, progress func(float64)) (*Images, error) {
-	g, err := volume.Cube(a.Dim, r.Reconstruction.Matrix, r.Reconstruction.FieldOfViewMM)
+// Errors: those of FramesOf and of the method; bug when constants and encoding do not fit.
+func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *Constants, frames []int, progress func(float64)) (*Images, error) {
+	g, err := gridOf(a, r)
 	if err != nil {
 		return nil, err
 	}
-	for _, d := range delays {
-		if d < 0 || d >= a.Delays {
-			return nil, fault.New(fault.BadSetting, "reconstruct", "delay %d asked for; the acquisition has 0 to %d", d, a.Delays-1)
+	f, err := FramesOf(a, r)
+	if err != nil {
+		return nil, err
+	}
+	for _, i := range frames {
+		if i < 0 || i >= len(f.TimeUS) {
+			return nil, fault.New(fault.BadSetting, "reconstruct", "frame %d asked for; there are 0 to %d", i, len(f.TimeUS)-1)
 		}
 	}
-	cut, _ := kCut(a, r)
-	geometry := condition.Plan(a, c, r.Reconstruction.FieldOfViewMM, cut)
-	sp, err := condition.Condition(a, conditioning(r), c, geometry, delays)
-	if err != nil {
-		return nil, err
+	switch {
+	case a.Encoding == acquisition.SinglePoint && c.SinglePoint != nil:
+		images, err := singlepoint.Images(a, singlePointSettings(r), c.SinglePoint, g, frames, progress)
+		if err != nil {
+			return nil, err
+		}
+		return &Images{Values: images.Values, NoiseSD: images.NoiseSD}, nil
+	case a.Encoding == acquisition.Spoke && c.Spokes != nil:
+		return spokeImages(a, r, c.Spokes, g, f.delaysOf(frames), progress)
 	}
-	axis, err := sampling.AxisWeights(a.Dim, sp.Directions)
-	if err != nil {
-		return nil, err
-	}
-	filter, err := spokeFilter(sp, r, cut)
-	if err != nil {
-		return nil, err
-	}
-	values := kernels[r.Reconstruction.Method](sp, g, axis, filter, progress)
-	return &Images{Values: values, NoiseSD: sp.NoiseSD(axis, filter)}, nil
-}
-
-func spokeFilter(sp *condition.Spokes, r recipe.Recipe, cut float64) ([]float64, error) {
-	w, err := sampling.WindowNamed(r.Reconstruction.Window)
-	if err != nil {
-		return nil, err
-	}
-	filter := w.Sample(sp.Half, sp.DeltaK, cut)
-	for m, ramp := range sampling.Ramp(sp.Dim, sp.Half, sp.DeltaK) {
-		filter[m] *= ramp
-	}
-	return filter, nil
+	return nil, fault.New(fault.Bug, "reconstruct", "the constants are not those of %s data", a.Encoding)
 }
 
 // fitBlock is how many voxels are fitted between two reports of progress: a few milliseconds of work.
 const fitBlock = 4096
 
-// Fit returns the rates of voxels. Values is [delay][voxel] over all delays of the acquisition; noiseSD is per delay.
+// Fit returns the rates of voxels. Values is [frame][voxel] over all frames of the recipe; noiseSD is per frame.
 //
-// Errors: those of relax.NewFitter; unsupported when no rate model fits the sequence.
+// Errors: those of FramesOf and relax.NewFitter; unsupported when no rate model fits the sequence.
 func Fit(a *acquisition.Acquisition, r recipe.Recipe, noiseSD []float64, values []float32, progress func(float64)) (*relax.Maps, error) {
-	f, err := fitter(a, r, noiseSD)
+	frames, err := FramesOf(a, r)
 	if err != nil {
 		return nil, err
 	}
-	voxels := len(values) / a.Delays
-	images := make([][]float32, a.Delays)
-	for d := range images {
-		images[d] = values[d*voxels : (d+1)*voxels]
+	f, err := frames.fitter(a, r, noiseSD)
+	if err != nil {
+		return nil, err
+	}
+	voxels := len(values) / len(frames.TimeUS)
+	images := make([][]float32, len(frames.TimeUS))
+	for i := range images {
+		images[i] = values[i*voxels : (i+1)*voxels]
 	}
 	out := relax.NewMaps(voxels)
 	for from := 0; from < voxels; from += fitBlock {
@@ -115,17 +118,25 @@ func Fit(a *acquisition.Acquisition, r recipe.Recipe, noiseSD []float64, values 
 	return out, nil
 }
 
-func fitter(a *acquisition.Acquisition, r recipe.Recipe, noiseSD []float64) (*relax.Fitter, error) {
-	for _, m := range relax.Models {
-		if m.Sequence == a.Sequence {
-			return relax.NewFitter(m, a.DelayUS, noiseSD, relax.Settings{RateMinPerUS: r.Rates.MinPerUS, RateMaxPerUS: r.Rates.MaxPerUS})
-		}
+// planWarnings says what a recipe does to an acquisition that a person may not expect.
+func planWarnings(a *acquisition.Acquisition, r recipe.Recipe, f Frames) []string {
+	var out []string
+	if a.Encoding == acquisition.Spoke {
+		out = append(out, spokeWarnings(a, r)...)
 	}
-	return nil, fault.New(fault.Unsupported, "sequence", "there is no rate model for %s yet", a.Sequence)
+	if n := a.Delays - len(r.Conditioning.KeptDelays(a)); n > 0 {
+		out = append(out, fmt.Sprintf("%d of %d delays are left out", n, a.Delays))
+	}
+	if n := len(a.ImageShots()) - len(r.Conditioning.KeptShots(a)); n > 0 {
+		out = append(out, fmt.Sprintf("%d of %d shots are left out", n, len(a.ImageShots())))
+	}
+	if r.Calibration == nil {
+		out = append(out, "no calibration: the rate map is made and the pO2 map is not; enter the rate at zero oxygen and the slope")
+	}
+	return out
 }
 
-// planWarnings says what a recipe does to an acquisition that a person may not expect.
-func planWarnings(a *acquisition.Acquisition, r recipe.Recipe) []string {
+func spokeWarnings(a *acquisition.Acquisition, r recipe.Recipe) []string {
 	var out []string
 	if _, limit := kCut(a, r); limit < 0.999*a.SmallestKMax() {
 		out = append(out, fmt.Sprintf("voxels of %.3g mm end k at %.3g cycles/mm, the data reach %.3g; a larger matrix would use all",
@@ -134,9 +145,6 @@ func planWarnings(a *acquisition.Acquisition, r recipe.Recipe) []string {
 	if r.Reconstruction.FieldOfViewMM > a.AliasFreeMM() {
 		out = append(out, fmt.Sprintf("the field of view of %.3g mm is larger than the sampling interval allows (%.3g mm); the rim repeats the object",
 			r.Reconstruction.FieldOfViewMM, a.AliasFreeMM()))
-	}
-	if r.Calibration == nil {
-		out = append(out, "no calibration: the rate map is made and the pO2 map is not; enter the rate at zero oxygen and the slope")
 	}
 	return out
 }

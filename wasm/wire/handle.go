@@ -32,9 +32,8 @@ type Engine struct {
 type opened struct {
 	a        *acquisition.Acquisition
 	hash     string
-	extentMM float64
+	facts    *session.Facts
 	defaults recipe.Recipe
-	measured *condition.Constants // under the default recipe
 }
 
 // NewEngine returns an engine with nothing open. Build names the sources it was made from.
@@ -117,42 +116,29 @@ func handleDemo(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, [][]
 
 // take makes a the open acquisition. What was open stays if a cannot be used.
 func (e *Engine) take(a *acquisition.Acquisition, inputs []Input, hash string, warnings []string) (any, [][]byte, error) {
-	c, more, err := condition.Measure(a, condition.Defaults())
+	facts, err := session.Survey(a)
 	if err != nil {
 		return nil, nil, fault.Within(a.Name, err)
 	}
-	e.open = &opened{a: a, hash: hash, extentMM: c.ExtentMM, defaults: recipe.Defaults(a, c.ExtentMM), measured: c}
+	e.open = &opened{a: a, hash: hash, facts: facts, defaults: facts.DefaultRecipe(a)}
 	reply := describe(e.open)
-	reply.Inputs, reply.Warnings = inputs, append(warnings, more...)
+	reply.Inputs, reply.Warnings = inputs, append(warnings, facts.Warnings...)
 	return reply, nil, nil
 }
 
 func describe(o *opened) Opened {
-	a, ref := o.a, o.a.ReferenceDelay()
+	a, f := o.a, o.facts
 	r := Opened{
 		Name: a.Name, MadeUp: a.MadeUp, Delays: a.Delays, Shots: a.Shots, Samples: a.Samples, Dim: a.Dim,
 		ImageShots: len(a.ImageShots()), DelayUS: a.DelayUS, DwellNS: a.DwellNS, TimeZero: a.TimeZeroSample,
 		Sequence: string(a.Sequence), Encoding: string(a.Encoding), Domain: string(a.Domain), RateName: a.RateName(),
-		KMax: a.SmallestKMax(), AliasFree: a.AliasFreeMM(), Extent: o.extentMM, Reference: ref,
-		Optional: a.Optional, Recipe: o.defaults, GradientMin: math.Inf(1),
+		KMax: f.KMaxPerMM, Resolution: f.ResolutionMM, AliasFree: f.AliasFreeMM, Extent: f.ExtentMM, SignalToNoise: f.SignalToNoise,
+		Reference: a.ReferenceDelay(), Coverage: f.Coverage, Optional: a.Optional, Recipe: o.defaults, GradientMin: math.Inf(1),
 	}
-	r.Resolution = 1 / (2 * r.KMax)
 	for _, s := range a.ImageShots() {
 		r.GradientMin, r.GradientMax = math.Min(r.GradientMin, a.Strength(s)), math.Max(r.GradientMax, a.Strength(s))
 	}
-	r.SignalToNoise = signalToNoise(o)
 	return r
-}
-
-// signalToNoise returns the echo height of the reference delay over the noise SD of one channel of a raw sample, or of
-// the same integral over a projection.
-func signalToNoise(o *opened) float64 {
-	a, ref := o.a, o.a.ReferenceDelay()
-	noise := o.measured.NoiseSD[ref]
-	if a.Domain == acquisition.Projection {
-		noise *= a.PositionStepMM * math.Sqrt(float64(a.Samples))
-	}
-	return math.Abs(o.measured.EchoHeight[ref]) / noise
 }
 
 func handleTraces(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, [][]byte, error) {
@@ -160,11 +146,15 @@ func handleTraces(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, []
 	if err != nil {
 		return nil, nil, err
 	}
-	a, c := e.open.a, e.open.measured
+	a, c := e.open.a, e.open.facts.Spokes
 	if q.Delay < 0 || q.Delay >= a.Delays || q.Shot < 0 || q.Shot >= a.Shots {
 		return nil, nil, fault.New(fault.BadSetting, "traces", "delay %d shot %d; there are %d delays and %d shots", q.Delay, q.Shot, a.Delays, a.Shots)
 	}
-	r := Traces{DelayUS: a.DelayUS, EchoHeight: c.EchoHeight, GradientMTm: a.GradientMTPerM[q.Shot]}
+	r := Traces{DelayUS: a.DelayUS, GradientMTm: a.GradientMTPerM[q.Shot]}
+	if c == nil { // single-point data have no echo and no projections
+		c = &condition.Constants{}
+	}
+	r.EchoHeight = c.EchoHeight
 	if a.Domain == acquisition.Time {
 		turn := cmplx.Rect(1, -c.PhaseRad)
 		for j, v := range a.Trace(q.Delay, q.Shot) {
@@ -172,6 +162,9 @@ func handleTraces(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, []
 			r.TimeNS = append(r.TimeNS, (float64(j)-a.TimeZeroSample)*a.DwellNS)
 			r.Real, r.Imag = append(r.Real, real(z)), append(r.Imag, imag(z))
 		}
+	}
+	if a.Encoding == acquisition.SinglePoint {
+		return r, nil, nil
 	}
 	r.PositionMM, r.Projection, err = condition.ProjectionOf(a, condition.Defaults(), c, q.Delay, q.Shot)
 	return r, nil, err
@@ -186,7 +179,7 @@ func handlePlan(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, [][]
 	if err != nil {
 		return nil, nil, err
 	}
-	p, err := session.NewPlan(e.open.a, e.open.hash, e.open.extentMM, r, q.Workers)
+	p, err := session.NewPlan(e.open.a, e.open.hash, e.open.facts.ExtentMM, r, q.Workers)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -212,11 +205,11 @@ func handleReconstruct(e *Engine, body []byte, _ [][]byte, progress func(Progres
 	if err != nil {
 		return nil, nil, err
 	}
-	c, err := decode[condition.Constants]([]byte(q.Constants))
+	c, err := decode[session.Constants]([]byte(q.Constants))
 	if err != nil {
 		return nil, nil, err
 	}
-	images, err := session.Reconstruct(e.open.a, q.Recipe, &c, q.Delays, tell(progress, "reconstruct"))
+	images, err := session.Reconstruct(e.open.a, q.Recipe, &c, q.Frames, tell(progress, "reconstruct"))
 	if err != nil {
 		return nil, nil, err
 	}
@@ -233,8 +226,8 @@ func handleFit(e *Engine, body []byte, buffers [][]byte, progress func(Progress)
 	if err != nil {
 		return nil, nil, err
 	}
-	if len(buffers) != 1 || len(buffers[0]) != 4*q.Voxels*e.open.a.Delays {
-		return nil, nil, fault.New(fault.Bug, "fit", "%d buffers for %d voxels at %d delays", len(buffers), q.Voxels, e.open.a.Delays)
+	if len(buffers) != 1 || len(buffers[0]) != 4*q.Voxels*len(q.NoiseSD) {
+		return nil, nil, fault.New(fault.Bug, "fit", "%d buffers for %d voxels in %d frames", len(buffers), q.Voxels, len(q.NoiseSD))
 	}
 	m, err := session.Fit(e.open.a, q.Recipe, q.NoiseSD, floatsOf(buffers[0]), tell(progress, "fit"))
 	if err != nil {
@@ -273,7 +266,7 @@ func handleExport(e *Engine, body []byte, buffers [][]byte, _ func(Progress)) (a
 	if q.Quantity == "mask" {
 		err = exporter.NIfTIMask(&file, "mask", g, session.InMask(buffers[0]))
 	} else {
-		err = exporter.NIfTI(&file, session.MapOf(q.Quantity, a, g, floatsOf(buffers[0])))
+		err = exporter.NIfTI(&file, session.MapOf(q.Quantity, q.RateName, g, floatsOf(buffers[0])))
 	}
 	name := a.Name + "-" + strings.ToLower(q.Quantity) + ".nii.gz"
 	return Exported{Name: name, Type: "application/gzip"}, [][]byte{file.Bytes()}, err

@@ -64,9 +64,9 @@ func TestRequestsGiveTheNumbersOfTheNativeRun(t *testing.T) {
 	plan, _ := ask[Plan](t, e, "plan", PlanRequest{Recipe: `{"recipe":1}`, Workers: 2})
 	measured, _ := ask[Measured](t, e, "measure", MeasureRequest{Recipe: plan.Recipe})
 	voxels := plan.N[0] * plan.N[1] * plan.N[2]
-	images, noise := make([]float32, voxels*opened.Delays), make([]float64, opened.Delays)
+	images, noise := make([]float32, voxels*len(plan.Frames.TimeUS)), make([]float64, len(plan.Frames.TimeUS))
 	for _, delays := range plan.ReconstructJobs {
-		r, out := ask[Reconstructed](t, e, "reconstruct", ReconstructRequest{Recipe: plan.Recipe, Constants: measured.Constants, Delays: delays})
+		r, out := ask[Reconstructed](t, e, "reconstruct", ReconstructRequest{Recipe: plan.Recipe, Constants: measured.Constants, Frames: delays})
 		for i, d := range delays {
 			copy(images[d*voxels:], floatsOf(out[0])[i*voxels:(i+1)*voxels])
 			noise[d] = r.NoiseSD[i]
@@ -83,7 +83,7 @@ func TestRequestsGiveTheNumbersOfTheNativeRun(t *testing.T) {
 		copy(se[job[0]:], floatsOf(out[1]))
 		copy(status[job[0]:], out[4])
 	}
-	ref := images[plan.Reference*voxels : (plan.Reference+1)*voxels]
+	ref := images[plan.Frames.Reference*voxels : (plan.Frames.Reference+1)*voxels]
 	derived, out := ask[Derived](t, e, "derive", DeriveRequest{Recipe: plan.Recipe}, bytesOf(ref), bytesOf(rate), bytesOf(se), status)
 
 	native, err := session.Run(e.open.a, e.open.hash, nil, 2)
@@ -124,8 +124,8 @@ func TestRequestsThatCannotBeDoneAreFaultsAndKeepWhatIsOpen(t *testing.T) {
 		{"open", OpenRequest{Names: []string{"a", "b"}}, [][]byte{nil, nil}, fault.Unsupported, "2 files at once"},
 		{"plan", PlanRequest{Recipe: `{"mask":{"amplitude":1}}`}, nil, fault.BadSetting, `key "amplitude"`},
 		{"traces", TracesRequest{Shot: 60}, nil, fault.BadSetting, "shot 60"},
-		{"reconstruct", ReconstructRequest{Recipe: e.open.defaults, Constants: `{}`, Delays: []int{9}}, nil, fault.BadSetting, "delay 9"},
-		{"fit", FitRequest{Recipe: e.open.defaults, Voxels: 3}, [][]byte{make([]byte, 8)}, fault.Bug, "3 voxels"},
+		{"reconstruct", ReconstructRequest{Recipe: e.open.defaults, Constants: `{}`, Frames: []int{9}}, nil, fault.BadSetting, "frame 9"},
+		{"fit", FitRequest{Recipe: e.open.defaults, Voxels: 3, NoiseSD: []float64{1}}, [][]byte{make([]byte, 8)}, fault.Bug, "3 voxels"},
 		{"derive", DeriveRequest{Recipe: e.open.defaults}, nil, fault.Bug, "0 buffers"},
 		{"paint", nil, nil, fault.Bug, "paint"},
 	} {
@@ -157,7 +157,7 @@ func TestProgressRisesToOne(t *testing.T) {
 	ask[Opened](t, e, "demo", DemoRequest{Noise: false})
 	plan, _ := ask[Plan](t, e, "plan", PlanRequest{Recipe: `{"reconstruction":{"matrix":16}}`})
 	measured, _ := ask[Measured](t, e, "measure", MeasureRequest{Recipe: plan.Recipe})
-	body, _ := json.Marshal(ReconstructRequest{Recipe: plan.Recipe, Constants: measured.Constants, Delays: []int{0}})
+	body, _ := json.Marshal(ReconstructRequest{Recipe: plan.Recipe, Constants: measured.Constants, Frames: []int{0}})
 	var seen []string
 	last := 0.0
 	_, _, err := e.Handle("reconstruct", body, nil, func(p Progress) {

@@ -13,6 +13,7 @@ import (
 	"torrloom/recon/fault"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
+	"torrloom/recon/singlepoint"
 )
 
 // Version changes whenever a message changes its shape or meaning. Page and engine refuse to talk across versions.
@@ -50,32 +51,33 @@ type DemoRequest struct {
 
 // Opened answers OpenRequest and DemoRequest: what was read.
 type Opened struct {
-	Name          string               `json:"name"`
-	MadeUp        bool                 `json:"madeUp"`
-	Inputs        []Input              `json:"inputs"`
-	Delays        int                  `json:"delays"`
-	Shots         int                  `json:"shots"`
-	ImageShots    int                  `json:"imageShots"`
-	Samples       int                  `json:"samples"`
-	Dim           int                  `json:"dim"`
-	DelayUS       []float64            `json:"delayUS"`
-	DwellNS       float64              `json:"dwellNS"`
-	TimeZero      float64              `json:"timeZeroSample"`
-	Sequence      string               `json:"sequence"`
-	Encoding      string               `json:"encoding"`
-	Domain        string               `json:"domain"`
-	RateName      string               `json:"rateName"` // R1 or R2
-	GradientMin   float64              `json:"gradientMinMTPerM"`
-	GradientMax   float64              `json:"gradientMaxMTPerM"`
-	KMax          float64              `json:"kMaxPerMM"`      // smallest over the image shots
-	Resolution    float64              `json:"resolutionMM"`   // 1/(2 kMax)
-	AliasFree     float64              `json:"aliasFreeMM"`    // field of view the sampling interval allows
-	Extent        float64              `json:"extentMM"`       // measured diameter of the object around the gradient centre
-	Reference     int                  `json:"referenceDelay"` // index of the delay of phase reference and mask
-	SignalToNoise float64              `json:"signalToNoise"`  // echo height over noise SD at the reference delay
-	Optional      acquisition.Optional `json:"optional"`
-	Recipe        recipe.Recipe        `json:"recipe"` // defaults for these data
-	Warnings      []string             `json:"warnings"`
+	Name          string                `json:"name"`
+	MadeUp        bool                  `json:"madeUp"`
+	Inputs        []Input               `json:"inputs"`
+	Delays        int                   `json:"delays"`
+	Shots         int                   `json:"shots"`
+	ImageShots    int                   `json:"imageShots"`
+	Samples       int                   `json:"samples"`
+	Dim           int                   `json:"dim"`
+	DelayUS       []float64             `json:"delayUS"`
+	DwellNS       float64               `json:"dwellNS"`
+	TimeZero      float64               `json:"timeZeroSample"`
+	Sequence      string                `json:"sequence"`
+	Encoding      string                `json:"encoding"`
+	Domain        string                `json:"domain"`
+	RateName      string                `json:"rateName"` // R1 or R2
+	GradientMin   float64               `json:"gradientMinMTPerM"`
+	GradientMax   float64               `json:"gradientMaxMTPerM"`
+	KMax          float64               `json:"kMaxPerMM"`      // that every direction reaches
+	Resolution    float64               `json:"resolutionMM"`   // 1/(2 kMax)
+	AliasFree     float64               `json:"aliasFreeMM"`    // field of view the sampling interval allows
+	Extent        float64               `json:"extentMM"`       // measured diameter of the object around the gradient centre
+	Reference     int                   `json:"referenceDelay"` // index of the delay of phase reference and mask
+	Coverage      *singlepoint.Coverage `json:"coverage"`       // of single-point data: what each sample time covers
+	SignalToNoise float64               `json:"signalToNoise"`  // echo height over noise SD at the reference delay
+	Optional      acquisition.Optional  `json:"optional"`
+	Recipe        recipe.Recipe         `json:"recipe"` // defaults for these data
+	Warnings      []string              `json:"warnings"`
 }
 
 // Input names one file and its SHA-256.
@@ -124,20 +126,20 @@ type Measured struct {
 	Warnings  []string `json:"warnings"`
 }
 
-// ReconstructRequest asks for the images of some delays. The reply has one buffer, float32 [delay][voxel].
+// ReconstructRequest asks for the images of some frames. The reply has one buffer, float32 [frame][voxel].
 type ReconstructRequest struct {
 	Recipe    recipe.Recipe `json:"recipe"`
 	Constants string        `json:"constants"`
-	Delays    []int         `json:"delays"`
+	Frames    []int         `json:"frames"`
 }
 
 // Reconstructed answers ReconstructRequest.
 type Reconstructed struct {
-	NoiseSD []float64 `json:"noiseSD"` // predicted noise SD of a voxel, per delay of the request
+	NoiseSD []float64 `json:"noiseSD"` // predicted noise SD of a voxel, per frame of the request
 	Seconds float64   `json:"seconds"`
 }
 
-// FitRequest asks for the rates of voxels. The buffer is float32 [delay][voxel] over the job's voxels, all delays.
+// FitRequest asks for the rates of voxels. The buffer is float32 [frame][voxel] over the job's voxels, all frames.
 // The reply has the buffers rate, rateSE, amplitude, chiSquare (float32) and status (uint8), each over those voxels.
 type FitRequest struct {
 	Recipe  recipe.Recipe `json:"recipe"`
@@ -150,7 +152,7 @@ type Fitted struct {
 	Seconds float64 `json:"seconds"`
 }
 
-// DeriveRequest asks for mask, pO2 and numbers. Buffers: the reference-delay image, rate, rateSE (float32), status
+// DeriveRequest asks for mask, pO2 and numbers. Buffers: the image of the reference frame, rate, rateSE (float32), status
 // (uint8), over all voxels. The reply has the buffers fate (uint8, see session.Fates), pO2 and pO2SE (float32; empty without a
 // calibration).
 type DeriveRequest struct {
@@ -164,7 +166,7 @@ type Derived = session.Numbers
 type ExportRequest struct {
 	Recipe   recipe.Recipe `json:"recipe"`
 	Quantity string        `json:"quantity"` // "pO2", "rate", "amplitude", "mask"
-	DelayUS  float64       `json:"delayUS"`  // of the amplitude image
+	RateName string        `json:"rateName"` // of the plan's frames
 }
 
 // Exported answers ExportRequest.

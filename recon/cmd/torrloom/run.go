@@ -19,7 +19,6 @@ import (
 	"torrloom/recon/importer"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
-	"torrloom/recon/volume"
 )
 
 // runFiles processes every file, goes on after one that is refused, and returns the code of the first that failed.
@@ -80,7 +79,7 @@ func runFile(path string, recipeText []byte, out string, workers int, stdout io.
 	}
 	folder := filepath.Join(out, stem(path))
 	record := newRecord(a, input, append(warnings, result.Warnings...), result)
-	if err := writeAll(folder, a, result, record); err != nil {
+	if err := writeAll(folder, result, record); err != nil {
 		return fault.New(fault.BadSetting, folder, "cannot be written: %v", err)
 	}
 	say(stdout, folder, result, record)
@@ -124,10 +123,12 @@ type inputRecord struct {
 type imageRecord struct {
 	N           [3]int     `json:"n"`
 	VoxelMM     [3]float64 `json:"voxelMM"`
-	ReferenceUS float64    `json:"referenceDelayUS"` // delay of amplitude.nii.gz and the mask
+	FrameKind   string     `json:"frameKind"` // what the images run along: delay or sample time
+	FrameUS     []float64  `json:"frameUS"`
+	ReferenceUS float64    `json:"referenceUS"` // frame of amplitude.nii.gz and the mask
 	MaskLevel   float64    `json:"maskLevel"`
 	RateName    string     `json:"rate"`
-	NoiseSD     []float64  `json:"noiseSD"` // of a voxel, per delay
+	NoiseSD     []float64  `json:"noiseSD"` // of a voxel, per frame
 	ExtentMM    float64    `json:"objectExtentMM"`
 }
 
@@ -143,18 +144,18 @@ func newRecord(a *acquisition.Acquisition, input inputRecord, warnings []string,
 	}
 	return record{
 		Program: "torrloom", Version: version, Inputs: []inputRecord{input}, MadeUp: a.MadeUp, Recipe: r.Plan.Recipe,
-		Image: imageRecord{N: r.Grid.N, VoxelMM: r.Grid.VoxelMM, ReferenceUS: a.DelayUS[r.Plan.Reference], MaskLevel: r.Derived.Numbers.MaskLevel,
-			RateName: a.RateName(), NoiseSD: r.NoiseSD, ExtentMM: r.Constants.ExtentMM},
+		Image: imageRecord{N: r.Grid.N, VoxelMM: r.Grid.VoxelMM, ReferenceUS: r.Plan.Frames.TimeUS[r.Plan.Frames.Reference], FrameKind: r.Plan.Frames.Kind, FrameUS: r.Plan.Frames.TimeUS, MaskLevel: r.Derived.Numbers.MaskLevel,
+			RateName: r.Plan.Frames.RateName, NoiseSD: r.NoiseSD, ExtentMM: r.Facts.ExtentMM},
 		Counts: counts, Rate: r.Derived.Numbers.Rate, PO2: r.Derived.Numbers.PO2, Timings: r.Seconds, Warnings: warnings, Caution: caution,
 	}
 }
 
 // writeAll writes into a folder beside the wanted one and renames it at the end, so that a folder of results is whole or
 // absent.
-func writeAll(folder string, a *acquisition.Acquisition, r *session.Result, rec record) error {
+func writeAll(folder string, r *session.Result, rec record) error {
 	parts := map[string]func(io.Writer) error{
-		"amplitude.nii.gz": nifti("amplitude", a, r.Grid, r.Images[r.Plan.Reference]),
-		"rate.nii.gz":      nifti("rate", a, r.Grid, answered(r, r.Maps.Rate)),
+		"amplitude.nii.gz": nifti("amplitude", r, r.Images[r.Plan.Frames.Reference]),
+		"rate.nii.gz":      nifti("rate", r, answered(r, r.Maps.Rate)),
 		"mask.nii.gz": func(w io.Writer) error {
 			return exporter.NIfTIMask(w, "mask", r.Grid, session.InMask(r.Derived.Fate))
 		},
@@ -166,7 +167,7 @@ func writeAll(folder string, a *acquisition.Acquisition, r *session.Result, rec 
 		},
 	}
 	if r.Derived.PO2 != nil {
-		parts["po2.nii.gz"] = nifti("pO2", a, r.Grid, r.Derived.PO2)
+		parts["po2.nii.gz"] = nifti("pO2", r, r.Derived.PO2)
 	}
 	if err := os.MkdirAll(filepath.Dir(folder), 0o755); err != nil {
 		return err
@@ -207,8 +208,10 @@ func moveParts(fresh, folder string, parts map[string]func(io.Writer) error) err
 	return nil
 }
 
-func nifti(quantity string, a *acquisition.Acquisition, g volume.Grid, values []float32) func(io.Writer) error {
-	return func(w io.Writer) error { return exporter.NIfTI(w, session.MapOf(quantity, a, g, values)) }
+func nifti(quantity string, r *session.Result, values []float32) func(io.Writer) error {
+	return func(w io.Writer) error {
+		return exporter.NIfTI(w, session.MapOf(quantity, r.Plan.Frames.RateName, r.Grid, values))
+	}
 }
 
 // answered returns values with NaN outside the answered voxels of the mask, as the pO2 map has.
