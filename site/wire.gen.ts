@@ -25,10 +25,12 @@ export interface Choice {
   help: string;
 }
 
-export interface Conditioning {
-  offset: string;
-  phase: string;
-  timeShiftSamples: number;
+export interface Coverage {
+  cartesian: boolean;
+  values: [number, number, number];
+  stepMTPerM: [number, number, number];
+  shots: number;
+  times: SampleTime[];
 }
 
 export interface DemoRequest {
@@ -42,7 +44,7 @@ export interface DeriveRequest {
 export interface ExportRequest {
   recipe: Recipe;
   quantity: string;
-  delayUS: number;
+  rateName: string;
 }
 
 export interface Exported {
@@ -79,6 +81,13 @@ export interface Fitted {
 export interface Fraction {
   threshold: number;
   share: number;
+}
+
+export interface Frames {
+  kind: string;
+  timeUS: number[];
+  reference: number;
+  rateName: string;
 }
 
 export interface Hello {
@@ -155,6 +164,7 @@ export interface Opened {
   aliasFreeMM: number;
   extentMM: number;
   referenceDelay: number;
+  coverage: Coverage | null;
   signalToNoise: number;
   optional: Optional;
   recipe: Recipe;
@@ -181,9 +191,9 @@ export interface Plan {
   voxelMM: [number, number, number];
   originMM: [number, number, number];
   memoryBytes: number;
+  frames: Frames;
   reconstructJobs: number[][];
   fitJobs: [number, number][];
-  referenceDelay: number;
   warnings: string[];
 }
 
@@ -204,8 +214,9 @@ export interface Rates {
 
 export interface Recipe {
   recipe: number;
-  conditioning: Conditioning;
+  conditioning: Settings;
   reconstruction: Reconstruction;
+  singlePoint: SinglePoint;
   rates: Rates;
   calibration?: Calibration;
   mask: Mask;
@@ -214,7 +225,7 @@ export interface Recipe {
 export interface ReconstructRequest {
   recipe: Recipe;
   constants: string;
-  delays: number[];
+  frames: number[];
 }
 
 export interface Reconstructed {
@@ -228,6 +239,18 @@ export interface Reconstruction {
   fieldOfViewMM: number;
   window: string;
   cutoff: number;
+  density: string;
+  tolerance: number;
+  oversampling: number;
+}
+
+export interface SampleTime {
+  sample: number;
+  timeUS: number;
+  usable: boolean;
+  kMaxPerMM: number;
+  fieldOfViewMM: number;
+  resolutionMM: number;
 }
 
 export interface Setting {
@@ -241,7 +264,33 @@ export interface Setting {
   step: number;
   choices: Choice[];
   help: string;
+  methods: string[];
   stage: string;
+}
+
+export interface Settings {
+  offset: string;
+  phase: string;
+  timeShiftSamples: number;
+  quadratureGain: number;
+  quadratureSkewDeg: number;
+  shotPhase: string;
+  shotTime: string;
+  phaseDriftDeg: number;
+  frequencyKHz: number;
+  frequencyDriftKHz: number;
+  amplitudeDrift: number;
+  deadSamples: number;
+  excludeShots?: number[];
+  excludeDelays?: number[];
+}
+
+export interface SinglePoint {
+  axis: string;
+  firstUS: number;
+  lastUS: number;
+  count: number;
+  resolution: string;
 }
 
 export interface Summary {

@@ -49,7 +49,7 @@ function adopt(opened: Opened): void {
     openFault.value = null;
     acquisition.value = opened;
     strands.value = [strand];
-    showFromTheStart(opened.referenceDelay);
+    showFromTheStart(opened.delayUS[opened.referenceDelay]);
   });
   rerun(strand, "measure");
 }

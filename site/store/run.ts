@@ -197,8 +197,8 @@ function since(began: number): number {
   return (performance.now() - began) / 1000;
 }
 
-function imageBytes({ delays }: Images): number {
-  return delays.reduce((sum, image) => sum + image.byteLength, 0);
+function imageBytes({ frames }: Images): number {
+  return frames.reduce((sum, image) => sum + image.byteLength, 0);
 }
 
 function rateBytes({ rate }: Rates): number {

@@ -9,7 +9,7 @@ import { engine } from "./engine";
 import { faultOf } from "./fault";
 import { textOf } from "./recipe";
 import { isOlder, type Oxygen, type Rates, type Strand } from "./strand";
-import { delay } from "./view";
+import { frameShown } from "./view";
 
 export type MapName = "pO2" | "rate" | "amplitude" | "mask";
 
@@ -35,10 +35,9 @@ export function canSave(strand: Strand, map: MapName): boolean {
 export async function saveMap(strand: Strand, map: MapName): Promise<void> {
   const values = valuesOf(strand, map);
   const plan = strand.plan.value;
-  const opened = acquisition.value;
-  if (!values || !plan || !opened || !canSave(strand, map)) return;
+  if (!values || !plan || !canSave(strand, map)) return;
   await noted(async () => {
-    const request = { recipe: plan.recipe, quantity: map, delayUS: opened.delayUS[delay.value] };
+    const request = { recipe: plan.recipe, quantity: map, rateName: plan.frames.rateName };
     const { body, buffers } = await engine().request("export", request, [values]);
     download(body.name, new Blob([buffers[0]], { type: body.type }));
   });
@@ -77,7 +76,7 @@ async function noted(work: () => Promise<void>): Promise<void> {
 /** Returns the array of a map as the export takes it: the values, or for the mask the fates. */
 function valuesOf(strand: Strand, map: MapName): Float32Array<ArrayBuffer> | Uint8Array<ArrayBuffer> | null {
   const oxygen = strand.oxygen.value;
-  if (map === "amplitude") return strand.images.value?.delays[delay.value] ?? null;
+  if (map === "amplitude") return frameShown(strand.images.value);
   if (map === "rate") return inMap(oxygen, strand.rates.value);
   return (map === "mask" ? oxygen?.fate : oxygen?.pO2) ?? null;
 }

@@ -20,21 +20,21 @@ export async function measure({ recipe }: Plan, tell: Tell) {
   return (await engine().request("measure", { recipe }, [], { onProgress: ({ fraction }) => tell(fraction) })).body;
 }
 
-/** Makes the image of every delay; the jobs of the plan run beside each other. */
+/** Makes the image of every frame; the jobs of the plan run beside each other. */
 export async function reconstruct(plan: Plan, constants: string, tell: Tell): Promise<Images> {
   const { recipe, reconstructJobs: jobs, keys } = plan;
   const grid = gridOf(plan);
-  const images: Images = { key: keys.reconstruct, grid, delays: [], noiseSD: [] };
+  const images: Images = { key: keys.reconstruct, grid, timeUS: plan.frames.timeUS, frames: [], noiseSD: [] };
   const tellPart = partsOf(
     jobs.map((job) => job.length),
     tell,
   );
-  await inTurns(jobs, jobs.length, async (delays, i) => {
+  await inTurns(jobs, jobs.length, async (frames, i) => {
     const onProgress = ({ fraction }: { fraction: number }) => tellPart(i, fraction);
-    const { body, buffers } = await engine().request("reconstruct", { recipe, constants, delays }, [], { onProgress });
-    delays.forEach((delay, at) => {
-      images.delays[delay] = new Float32Array(buffers[0], at * voxelsOf(grid) * 4, voxelsOf(grid));
-      images.noiseSD[delay] = body.noiseSD[at];
+    const { body, buffers } = await engine().request("reconstruct", { recipe, constants, frames }, [], { onProgress });
+    frames.forEach((frame, at) => {
+      images.frames[frame] = new Float32Array(buffers[0], at * voxelsOf(grid) * 4, voxelsOf(grid));
+      images.noiseSD[frame] = body.noiseSD[at];
     });
     tellPart(i, 1);
   });
@@ -62,7 +62,7 @@ export async function fit(plan: Plan, images: Images, tell: Tell): Promise<Rates
 
 /** Makes mask, pO2 and numbers out of a finished fit. */
 export async function derive(plan: Plan, images: Images, rates: Rates, tell: Tell): Promise<Oxygen> {
-  const inputs = [images.delays[plan.referenceDelay], rates.rate, rates.rateSE, rates.status];
+  const inputs = [images.frames[plan.frames.reference], rates.rate, rates.rateSE, rates.status];
   const onProgress = ({ fraction }: { fraction: number }) => tell(fraction);
   const { body, buffers } = await engine().request("derive", { recipe: plan.recipe }, inputs, { onProgress });
   return {
@@ -81,10 +81,10 @@ function emptyRates(key: string, grid: Grid): Rates {
   return { key, grid, rate: empty(), rateSE: empty(), amplitude: empty(), chiSquare: empty(), status };
 }
 
-/** Returns the values of a range of voxels as [delay][voxel]. */
-function gathered({ delays }: Images, from: number, to: number): Float32Array<ArrayBuffer> {
-  const out = new Float32Array(delays.length * (to - from));
-  delays.forEach((image, d) => out.set(image.subarray(from, to), d * (to - from)));
+/** Returns the values of a range of voxels as [frame][voxel]. */
+function gathered({ frames }: Images, from: number, to: number): Float32Array<ArrayBuffer> {
+  const out = new Float32Array(frames.length * (to - from));
+  frames.forEach((image, f) => out.set(image.subarray(from, to), f * (to - from)));
   return out;
 }
 

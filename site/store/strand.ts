@@ -18,11 +18,12 @@ export type StageState =
   | { state: "done"; seconds: number; reused: boolean }
   | { state: "failed"; fault: Fault };
 
-/** The images of the delays. Each array holds one value per voxel, x-fastest. */
+/** The images of the frames: delays, or sample times of single-point data. One value per voxel, x-fastest. */
 export interface Images {
   key: string;
   grid: Grid;
-  delays: Float32Array<ArrayBuffer>[];
+  timeUS: number[];
+  frames: Float32Array<ArrayBuffer>[];
   noiseSD: number[];
 }
 

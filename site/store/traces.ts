@@ -7,7 +7,7 @@ import { acquisition } from "./acquisition";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
 import { openingSettled } from "./opening";
-import { delay, shot } from "./view";
+import { frameIndex, shot } from "./view";
 
 export const traces = signal<Traces | null>(null);
 export const tracesFault = signal<Fault | null>(null);
@@ -16,12 +16,12 @@ export const tracesFault = signal<Fault | null>(null);
 export function followTraces(): void {
   effect(() => {
     const opened = acquisition.value;
-    if (opened) void fetchTraces(opened, delay.value, shot.value);
+    if (opened) void fetchTraces(opened, frameIndex(opened.delayUS), shot.value);
   });
 }
 
 async function fetchTraces(opened: Opened, atDelay: number, atShot: number): Promise<void> {
-  const wanted = () => acquisition.peek() === opened && delay.peek() === atDelay && shot.peek() === atShot;
+  const wanted = () => acquisition.peek() === opened && frameIndex(opened.delayUS) === atDelay && shot.peek() === atShot;
   while (wanted()) {
     try {
       const { body } = await engine().request("traces", { delay: atDelay, shot: atShot });

@@ -1,4 +1,4 @@
-// What all strands share: plane, cursor, slice (the cursor's place across the plane), the delay of the amplitude image,
+// What all strands share: plane, cursor, slice (the cursor's place across the plane), the frame of the amplitude image,
 // and the windows of the colour scales.
 
 import { computed, signal, type Signal } from "@preact/signals";
@@ -9,7 +9,9 @@ import { strands, type Images } from "./strand";
 
 export const plane = signal<Plane>("xy");
 export const cursorMM = signal<Triple>([0, 0, 0]);
-export const delay = signal(0);
+
+/** Delay or sample time of the amplitude image; a strand without that one shows the nearest it has. */
+export const frameUS = signal(0);
 export const shot = signal(0);
 
 /** Windows that a person has set; null means automatic. */
@@ -19,8 +21,8 @@ export const setWindows: Record<Quantity, Signal<Window | null>> = {
   pO2: signal(null),
 };
 
-/** Whether the automatic window of the amplitude image is one for all delays, so that their signs can be compared. */
-export const oneWindowForDelays = signal(false);
+/** Whether the automatic window of the amplitude image is one for all frames, so that their signs can be compared. */
+export const oneWindowForFrames = signal(false);
 
 const automatic = {
   amplitude: computed(() => amplitudeWindow(strands.value[0]?.images.value ?? null)),
@@ -48,7 +50,8 @@ export function windowOf(quantity: Quantity): Window {
 }
 
 function amplitudeWindow(images: Images | null): Window {
-  const shown = oneWindowForDelays.value ? images?.delays : images?.delays.slice(delay.value, delay.value + 1);
+  const one = frameShown(images);
+  const shown = oneWindowForFrames.value ? images?.frames : one && [one];
   if (!shown?.length) return { low: 0, high: 1 };
   const ranges = shown.map((image) => quantilesOf(image, 0.005, 0.995));
   const low = Math.min(...ranges.map(([p]) => p));
@@ -57,10 +60,10 @@ function amplitudeWindow(images: Images | null): Window {
 }
 
 /** Puts everything shared back for a newly opened acquisition. */
-export function showFromTheStart(referenceDelay: number): void {
+export function showFromTheStart(referenceUS: number): void {
   plane.value = "xy";
   cursorMM.value = [0, 0, 0];
-  delay.value = referenceDelay;
+  frameUS.value = referenceUS;
   shot.value = 0;
   for (const window of Object.values(setWindows)) window.value = null;
 }
@@ -81,7 +84,20 @@ export function moveSlice(grid: Grid, slices: number): void {
   moveCursor(grid, axesOf(plane.value).w, slices);
 }
 
-/** Shows another delay, by its place in the order of the file. */
-export function moveDelay(delays: number, by: number): void {
-  delay.value = Math.min(Math.max(delay.value + by, 0), delays - 1);
+/** Returns the place of the frame to show among some. */
+export function frameIndex(timeUS: number[]): number {
+  const distances = timeUS.map((us) => Math.abs(us - frameUS.value));
+  return distances.indexOf(Math.min(...distances));
+}
+
+/** Returns the image of the frame to show, or null. */
+export function frameShown(images: Images | null): Float32Array<ArrayBuffer> | null {
+  return images?.frames[frameIndex(images.timeUS)] ?? null;
+}
+
+/** Shows another frame, by its place in the order of the first strand. */
+export function moveFrame(by: number): void {
+  const times = strands.value[0]?.plan.value?.frames.timeUS ?? [];
+  const at = Math.min(Math.max(frameIndex(times) + by, 0), times.length - 1);
+  if (at >= 0) frameUS.value = times[at];
 }

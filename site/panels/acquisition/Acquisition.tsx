@@ -5,7 +5,7 @@ import { significant } from "../../draw/number";
 import { acquisition } from "../../store/acquisition";
 import { wordsOf } from "../../store/fault";
 import { traces, tracesFault } from "../../store/traces";
-import { delay, shot } from "../../store/view";
+import { frameIndex, shot } from "../../store/view";
 import type { Input, Opened, Traces } from "../../wire.gen";
 import { Chart, type Table } from "../chart/Chart";
 import { factsOf, sizeOf } from "./facts";
@@ -133,7 +133,7 @@ function Charts({ curves }: { curves: Traces }) {
       />
       <Chart
         title="whole signal over the delays"
-        draw={(width) => delayChart(curves, delay.value, width)}
+        draw={(width) => delayChart(curves, frameIndex(delayUS), width)}
         summary={`mean echo height at ${delayUS.length} delays`}
         table={() => delayTable(curves)}
       />

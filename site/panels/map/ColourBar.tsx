@@ -5,8 +5,8 @@ import { tableFor, tableSize, type Quantity } from "../../draw/colour";
 import { percent, plain, unitText } from "../../draw/number";
 import type { Painted } from "../../draw/slice";
 import { ticksOf, type Window } from "../../draw/window";
-import { acquisition } from "../../store/acquisition";
-import { delay, oneWindowForDelays, setWindows, windowOf } from "../../store/view";
+import { strands } from "../../store/strand";
+import { frameIndex, oneWindowForFrames, setWindows, windowOf } from "../../store/view";
 import { amplitudeUnit } from "../view/readout";
 
 interface Props {
@@ -28,15 +28,16 @@ export function ColourBar({ id, quantity, title, tally }: Props) {
       <p class="clipped" data-clipped={quantity}>
         {tally ? clippedWords(tally) : ""}
       </p>
-      {quantity === "amplitude" && <DelaySwitch id={id} />}
+      {quantity === "amplitude" && <FrameSwitch id={id} />}
     </div>
   );
 }
 
-/** Returns quantity and unit; of an amplitude image also its delay. */
+/** Returns quantity and unit; of an amplitude image also its frame. */
 function barTitle(quantity: Quantity, title: string): string {
   if (quantity !== "amplitude") return `${title} in ${quantity === "rate" ? unitText("1/us") : "torr"}`;
-  const us = plain(acquisition.value?.delayUS[delay.value] ?? 0, 4);
+  const timeUS = strands.value[0]?.plan.value?.frames.timeUS ?? [];
+  const us = plain(timeUS[frameIndex(timeUS)] ?? 0, 4);
   return `${title} at ${us} µs in signal ${amplitudeUnit()}`;
 }
 
@@ -129,16 +130,16 @@ function WindowEnd({ name, id, value, enter }: EndProps) {
   );
 }
 
-function DelaySwitch({ id }: { id: string }) {
+function FrameSwitch({ id }: { id: string }) {
   return (
     <label class="switch">
       <input
-        id={`window-${id}-delays`}
+        id={`window-${id}-frames`}
         type="checkbox"
-        checked={oneWindowForDelays.value}
-        onChange={(event) => (oneWindowForDelays.value = event.currentTarget.checked)}
+        checked={oneWindowForFrames.value}
+        onChange={(event) => (oneWindowForFrames.value = event.currentTarget.checked)}
       />
-      one auto window for all delays
+      one auto window for all of these images
     </label>
   );
 }

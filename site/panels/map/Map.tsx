@@ -5,10 +5,9 @@ import { tableFor, type Quantity } from "../../draw/colour";
 import { axesOf, sameGrid, voxelAt, type Grid } from "../../draw/grid";
 import { drawScene, voxelUnder, type Scene } from "../../draw/scene";
 import type { Painted } from "../../draw/slice";
-import { acquisition } from "../../store/acquisition";
 import { tones } from "../../store/appearance";
 import { isOlder, type Strand } from "../../store/strand";
-import { cursorMM, delay, plane, pointAt, windowOf } from "../../store/view";
+import { cursorMM, frameShown, plane, pointAt, windowOf } from "../../store/view";
 import { useWidth } from "../chart/Chart";
 import { valueAt } from "../view/readout";
 import { ColourBar } from "./ColourBar";
@@ -68,7 +67,7 @@ function valuesOf(strand: Strand, quantity: Quantity): { grid: Grid; values: Flo
   const [images, rates, oxygen] = [strand.images.value, strand.rates.value, strand.oxygen.value];
   if (quantity === "pO2") return oxygen?.pO2 ? { grid: oxygen.grid, values: oxygen.pO2 } : null;
   if (quantity === "rate") return rates && { grid: rates.grid, values: rates.rate };
-  const values = images?.delays[delay.value];
+  const values = frameShown(images);
   return images && values ? { grid: images.grid, values } : null;
 }
 
@@ -106,7 +105,7 @@ function Canvas({ scene, label, hint, tell }: CanvasProps) {
         point(event);
       }}
       onPointerMove={(event) => event.buttons & 1 && point(event)}
-      onKeyDown={(event) => scene && steer(event, scene.grid, acquisition.value?.delays ?? 1)}
+      onKeyDown={(event) => scene && steer(event, scene.grid)}
     />
   );
 }

@@ -1,9 +1,9 @@
 // The keys that work on a focused map.
 
 import { axesOf, type Grid } from "../../draw/grid";
-import { cursorMM, moveCursor, moveDelay, moveSlice, plane } from "../../store/view";
+import { cursorMM, moveCursor, moveFrame, moveSlice, plane } from "../../store/view";
 
-type Move = (grid: Grid, delays: number) => void;
+type Move = (grid: Grid) => void;
 
 const moves: Record<string, Move> = {
   ArrowLeft: (grid) => moveCursor(grid, axesOf(plane.value).u, -1),
@@ -14,15 +14,15 @@ const moves: Record<string, Move> = {
   PageDown: (grid) => moveSlice(grid, -1),
   ".": (grid) => moveSlice(grid, 1),
   ",": (grid) => moveSlice(grid, -1),
-  "]": (_, delays) => moveDelay(delays, 1),
-  "[": (_, delays) => moveDelay(delays, -1),
+  "]": () => moveFrame(1),
+  "[": () => moveFrame(-1),
   Home: () => (cursorMM.value = [0, 0, 0]),
 };
 
 /** Does what the key says, if it says anything. Keys with Ctrl, Alt or Meta are left to the browser. */
-export function steer(event: KeyboardEvent, grid: Grid, delays: number): void {
+export function steer(event: KeyboardEvent, grid: Grid): void {
   const move = moves[event.key];
   if (!move || event.ctrlKey || event.altKey || event.metaKey) return;
   event.preventDefault();
-  move(grid, delays);
+  move(grid);
 }

@@ -92,7 +92,7 @@ function NumberInput({ setting, strand, tellUnreadable, ...input }: NumberInputP
       {...input}
       {...limits}
       type="number"
-      value={standing ? draft.text : String(value)}
+      value={standing ? draft.text : String(value ?? 0)}
       step={step || "any"}
       onInput={(event) => read(event.currentTarget.value)}
     />

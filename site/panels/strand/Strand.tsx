@@ -12,7 +12,7 @@ import { Settings } from "../settings/Settings";
 import { StageWords, Thread } from "./Thread";
 
 export function StrandPanel({ strand }: { strand: Strand }) {
-  const rateName = acquisition.value?.rateName ?? "";
+  const rateName = strand.plan.value?.frames.rateName ?? acquisition.value?.rateName ?? "";
   return (
     <section class="strand" data-strand={strand.id} aria-labelledby={`strand-${strand.id}`}>
       <h2 id={`strand-${strand.id}`}>{strand.name}</h2>

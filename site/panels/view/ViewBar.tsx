@@ -1,10 +1,9 @@
-// What all strands share: plane, slice, delay of the amplitude image, and the values at the cursor in words.
+// What all strands share: plane, slice, frame of the amplitude image, and the values at the cursor in words.
 
 import { axesOf, axisNames, isFlat, planes, voxelAt, type Grid } from "../../draw/grid";
 import { fixed, plain } from "../../draw/number";
-import { acquisition } from "../../store/acquisition";
-import { strands } from "../../store/strand";
-import { cursorMM, delay, moveSlice, plane } from "../../store/view";
+import { strands, type Strand } from "../../store/strand";
+import { cursorMM, frameIndex, frameUS, moveSlice, plane } from "../../store/view";
 import { readoutOf } from "./readout";
 
 export function ViewBar() {
@@ -15,7 +14,7 @@ export function ViewBar() {
     <section class="view-bar" aria-label="Shared view">
       <PlanePicker flat={isFlat(grid)} />
       <SlicePicker grid={grid} />
-      <DelayPicker />
+      <FramePicker strand={strand} />
       <p class="readout" id="readout" role="status">
         {readoutOf(strand).map((part, i) => (
           <span key={i}>{part} </span>
@@ -74,14 +73,18 @@ function SlicePicker({ grid }: { grid: Grid }) {
   );
 }
 
-function DelayPicker() {
-  const delays = acquisition.value?.delayUS ?? [];
+function FramePicker({ strand }: { strand: Strand }) {
+  const { kind, timeUS } = strand.plan.value?.frames ?? { kind: "delay", timeUS: [] };
   return (
     <label class="delay">
-      <span>amplitude at delay</span>
-      <select id="delay" value={delay.value} onChange={(event) => (delay.value = Number(event.currentTarget.value))}>
-        {delays.map((us, d) => (
-          <option value={d} key={d}>
+      <span>amplitude at {kind}</span>
+      <select
+        id="frame"
+        value={frameIndex(timeUS)}
+        onChange={(event) => (frameUS.value = timeUS[Number(event.currentTarget.value)])}
+      >
+        {timeUS.map((us, f) => (
+          <option value={f} key={f}>
             {plain(us, 4)} µs
           </option>
         ))}

@@ -5,7 +5,7 @@ import { centreOf, indexOf, insideFieldOfView, sameGrid, voxelAt, type Grid } fr
 import { fixed, plain, unitText, withError } from "../../draw/number";
 import { acquisition } from "../../store/acquisition";
 import type { Strand } from "../../store/strand";
-import { cursorMM, delay } from "../../store/view";
+import { cursorMM, frameIndex, frameShown } from "../../store/view";
 import type { Quantity } from "../../draw/colour";
 
 /** Returns one sentence on the voxel under the cursor, in parts: its place, and its value in each map. */
@@ -15,8 +15,8 @@ export function readoutOf(strand: Strand): string[] {
   const voxel = voxelAt(grid, cursorMM.value);
   const [x, y, z] = centreOf(grid, voxel).map((mm) => fixed(mm, 1));
   const place = `voxel ${voxel.join(", ")} at x ${x}, y ${y}, z ${z} mm`;
-  const us = plain(acquisition.value?.delayUS[delay.value] ?? 0, 4);
-  const rateName = acquisition.value?.rateName ?? "rate";
+  const { timeUS, rateName } = strand.plan.value?.frames ?? { timeUS: [], rateName: "rate" };
+  const us = plain(timeUS[frameIndex(timeUS)] ?? 0, 4);
   return [
     `${place}:`,
     `amplitude at ${us} µs ${valueAt(strand, "amplitude")};`,
@@ -37,10 +37,11 @@ export function amplitudeUnit(): string {
 
 function amplitudeAt({ images }: Strand): string {
   const shown = images.value;
-  if (!shown?.delays[delay.value]) return "not made yet";
+  const values = frameShown(shown);
+  if (!shown || !values) return "not made yet";
   const index = cursorIndex(shown.grid);
   if (!insideFieldOfView(shown.grid, voxelAt(shown.grid, cursorMM.value))) return "outside the field of view";
-  return `${withError(shown.delays[delay.value][index], shown.noiseSD[delay.value])} ${amplitudeUnit()}`;
+  return `${withError(values[index], shown.noiseSD[frameIndex(shown.timeUS)])} ${amplitudeUnit()}`;
 }
 
 function rateAt(strand: Strand): string {
