@@ -88,11 +88,12 @@ type source struct {
 	reach      int       // transformed samples on either side of the gradient centre
 	stepMM     float64   // distance of table entries
 	scale      []float64 // [delay] from signal to fixed point
+	rows       [][2]int  // see rowsInside
 }
 
 func newSource(sp *condition.Spokes, g volume.Grid, axis, filter []float64, f fineness, from, to int) *source {
 	length := fft.FastLength(f.transformed * 2 * sp.Half)
-	s := &source{sp: sp, g: g, axis: axis, filter: compensated(filter, length, f), from: from, to: to, pairs: (to - from + 1) / 2, between: f.between}
+	s := &source{sp: sp, g: g, axis: axis, filter: compensated(filter, length, f), from: from, to: to, pairs: (to - from + 1) / 2, between: f.between, rows: rowsInside(g)}
 	s.plan, _ = fft.NewPlan[complex64](length) // FastLength is always a valid length
 	s.line, s.work = make([]complex64, length*s.pairs), make([]complex64, length*s.pairs)
 	s.stepMM = 1 / (sp.DeltaK * float64(length*f.between))
@@ -184,12 +185,20 @@ func (s *source) at(x, l int) (first, second float64) {
 	return first, second
 }
 
-// rowInside returns the range of ix whose voxel centres lie in the field of view.
-func (s *source) rowInside(iy, iz int) (from, to int) {
-	n := s.g.N[0]
-	for from = 0; from < n && !s.g.InsideFieldOfView(from, iy, iz); from++ {
+// rowsInside returns, for every row of voxels [iz][iy], the range of ix whose centres lie in the field of view.
+func rowsInside(g volume.Grid) [][2]int {
+	out := make([][2]int, 0, g.N[1]*g.N[2])
+	for iz := range g.N[2] {
+		for iy := range g.N[1] {
+			from, to := 0, g.N[0]
+			for from < to && !g.InsideFieldOfView(from, iy, iz) {
+				from++
+			}
+			for to > from && !g.InsideFieldOfView(to-1, iy, iz) {
+				to--
+			}
+			out = append(out, [2]int{from, to})
+		}
 	}
-	for to = n; to > from && !s.g.InsideFieldOfView(to-1, iy, iz); to-- {
-	}
-	return from, to
+	return out
 }

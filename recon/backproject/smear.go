@@ -78,9 +78,9 @@ func smearSlab[T bundle](s *source, add adder[T], sum, table []T, from, to, z0, 
 		}
 		for iz := z0; iz < z1; iz++ {
 			for iy := range s.g.N[1] {
-				if first, end := s.rowInside(iy, iz); first < end {
-					row := sum[s.g.Index(first, iy, iz) : s.g.Index(end-1, iy, iz)+1]
-					add(row, tables, s.walks(i, to, first, iy, iz))
+				if inside := s.rows[iz*s.g.N[1]+iy]; inside[0] < inside[1] {
+					start := s.g.Index(0, iy, iz)
+					add(sum[start+inside[0]:start+inside[1]], tables, s.walks(i, to, inside[0], iy, iz))
 				}
 			}
 		}
@@ -108,8 +108,8 @@ func finish[T bundle](s *source, sum []T) []float32 {
 	}
 	for iz := range s.g.N[2] {
 		for iy := range s.g.N[1] {
-			first, end := s.rowInside(iy, iz)
-			for ix := first; ix < end; ix++ {
+			inside := s.rows[iz*s.g.N[1]+iy]
+			for ix := inside[0]; ix < inside[1]; ix++ {
 				i := s.g.Index(ix, iy, iz)
 				for d := range s.scale {
 					pair := [2]float64{}
