@@ -143,11 +143,7 @@ func numbersIn(name string) (pattern string, numbers []int) {
 
 // join puts the arrays of the files of one series together.
 func join(group []fileArrays) (fileArrays, error) {
-	slices.SortStableFunc(group, func(a, b fileArrays) int {
-		_, left := numbersIn(a.name)
-		_, right := numbersIn(b.name)
-		return cmp.Or(slices.Compare(left, right), strings.Compare(a.name, b.name))
-	})
+	sortByNumbers(group)
 	leading := leadingAxes(group)
 	pattern := seriesName(group)
 	out := fileArrays{name: pattern}
@@ -175,6 +171,15 @@ func join(group []fileArrays) (fileArrays, error) {
 	}
 	out.note = fmt.Sprintf("%d files, %s to %s, were put together in the order of their numbers, as %s", len(group), first.name, last.name, acquisition.ShapeText(leading))
 	return out, nil
+}
+
+// sortByNumbers orders names that differ in their numbers.
+func sortByNumbers(group []fileArrays) {
+	slices.SortStableFunc(group, func(a, b fileArrays) int {
+		_, left := numbersIn(a.name)
+		_, right := numbersIn(b.name)
+		return cmp.Or(slices.Compare(left, right), strings.Compare(a.name, b.name))
+	})
 }
 
 // joinOne stacks what differs from file to file.
