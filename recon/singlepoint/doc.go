@@ -14,5 +14,5 @@
 //
 // Gradients on a Cartesian lattice, which may have holes, are summed axis by axis: directly, pairing ±k and ±x, for few
 // k per axis, and by chirp-z beyond. Both are exact to rounding on any matrix, so nothing is zero-filled or
-// interpolated. Gradients in any other arrangement are summed one by one with iterative density weights.
+// interpolated. Gradients in any other arrangement go through Kaiser-Bessel gridding, each weighted by its Voronoi cell.
 package singlepoint

@@ -61,15 +61,15 @@ func (geo *geometry) useLattice() {
 
 // useList finds what an arbitrary list covers: the largest ball in the hull of its gradients and their mirrors.
 func (geo *geometry) useList() error {
-	h := newHull(geo.g, geo.dim)
-	// Its directions see a plane from 1.5° above, as one fortieth as thick as it is wide.
-	if !(h.least > 0.05*h.most) {
+	least, most := reach(geo.g, geo.dim)
+	// The directions of reach see a plane from 1.5° above, as one fortieth as thick as it is wide.
+	if !(least > 0.05*most) {
 		return fault.New(fault.NoAnswer, "gradient_mT_per_m", "%d gradients lie on a line or in a plane; a %dD image needs gradients in all %d directions", len(geo.g), geo.dim, geo.dim)
 	}
-	geo.most = h.least
-	both := mirrored(geo.g, h.most)
-	geo.cell = h.least * math.Pow(unitBall(geo.dim)/float64(len(both.within(h.least))), 1/float64(geo.dim))
-	geo.share = density(both, h, geo.dim, geo.cell)
+	geo.most = least
+	p := placesOf(geo.g, geo.dim, most)
+	geo.cell = least * math.Pow(unitBall(geo.dim)/float64(p.within(least)), 1/float64(geo.dim))
+	geo.share = cellVolumes(p, least, geo.cell)
 	return nil
 }
 

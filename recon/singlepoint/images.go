@@ -61,17 +61,17 @@ func Images(a *acquisition.Acquisition, s Settings, p *Plan, g volume.Grid, fram
 // blank returns images that are 0 in the field of view and NaN outside.
 func blank(g volume.Grid, frames int) []float32 {
 	out := make([]float32, frames*g.Voxels())
-	nan := float32(math.NaN())
-	for iz := range g.N[2] {
-		for iy := range g.N[1] {
-			for ix := range g.N[0] {
-				for f := range frames {
-					if !g.InsideFieldOfView(ix, iy, iz) {
-						out[f*g.Voxels()+g.Index(ix, iy, iz)] = nan
-					}
-				}
-			}
+	if frames == 0 {
+		return out
+	}
+	first, nan := out[:g.Voxels()], float32(math.NaN())
+	for i := range first {
+		if !g.InsideFieldOfView(i%g.N[0], i/g.N[0]%g.N[1], i/(g.N[0]*g.N[1])) {
+			first[i] = nan
 		}
+	}
+	for f := 1; f < frames; f++ {
+		copy(out[f*g.Voxels():], first)
 	}
 	return out
 }

@@ -72,7 +72,11 @@ func Prepare(a *acquisition.Acquisition, s Settings, g volume.Grid, samples []in
 	}
 	p.KCutPerMM = cutoffs(times, s, g)
 	p.predict(a, s, geo, heights)
-	return p, prepareWarnings(p, times, s, g, heights), nil
+	warnings := prepareWarnings(p, times, s, g, heights)
+	if beside := r.besideOrigin(); s.Phase != "none" && beside > 1e-3*geo.cell {
+		warnings = append(warnings, fmt.Sprintf("the shots nearest to k = 0 lie around a gradient of %.3g mT/m, so that an object off the gradient centre turns the phase they give; add a shot without gradient", beside))
+	}
+	return p, warnings, nil
 }
 
 func checkAsked(a *acquisition.Acquisition, s Settings, g volume.Grid) error {

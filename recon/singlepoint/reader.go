@@ -51,6 +51,17 @@ func nearestToOrigin(a *acquisition.Acquisition) []int {
 	return out
 }
 
+// besideOrigin returns the length of the mean gradient of the shots nearest to k = 0, in mT/m.
+func (r *reader) besideOrigin() float64 {
+	var mean [3]float64
+	for _, s := range r.origin {
+		for axis, g := range r.a.GradientMTPerM[s] {
+			mean[axis] += g / float64(len(r.origin))
+		}
+	}
+	return length(mean)
+}
+
 func (r *reader) at(d, s, j int) complex128 {
 	v := complex128(r.a.Signal[(d*r.a.Shots+s)*r.a.Samples+j])
 	if r.baseline != nil {
