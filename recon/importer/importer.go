@@ -39,7 +39,7 @@ type File struct {
 }
 
 // Formats lists what can be read. The first row that recognises a file reads it.
-var Formats = []Format{numpyArray, numpyArchive, hdf5, zipArchive, matLevel5, gzipped, nifti, matLevel4, columns}
+var Formats = []Format{numpyArray, numpyArchive, hdf5, zipArchive, matLevel5, gzipped, nifti, matLevel4, jcamp, columns}
 
 // HeadBytes is how much of a file's beginning a format may ask for to recognise it.
 const HeadBytes = 4096
