@@ -26,7 +26,7 @@ var lines = map[string]int{
 	"recon/phantom":      3,
 	"recon/importer":     3,
 	"recon/condition":    3,
-	"recon/quality":      3,
+	"recon/quality":      5, // judges what conditioning measures, shares of directions and rates; proposes settings
 	"recon/sampling":     3,
 	"recon/backproject":  4,
 	"recon/gridding":     4,

@@ -169,6 +169,15 @@ func offsetFromEnds(a *acquisition.Acquisition, s Settings, noiseSD []float64) (
 	return offset, cmplx.Abs(offset) > standsOut*leverage*math.Max(se, misfit)
 }
 
+// EndOffset returns the receiver's offset that the ends of the traces show, and whether it stands out of the noise; see
+// the row trace-ends of Offsets. It does not matter whether the settings subtract it.
+func EndOffset(a *acquisition.Acquisition, s Settings, c *Constants) (offset complex128, stands bool) {
+	if a.Domain != acquisition.Time {
+		return 0, false
+	}
+	return offsetFromEnds(a, s, c.NoiseSD)
+}
+
 // endSamples lists the outermost tenth of the samples at the ends of the trace that lie far from k = 0.
 func endSamples(a *acquisition.Acquisition, s Settings) []int {
 	zero := a.TimeZeroSample + s.TimeShiftSamples

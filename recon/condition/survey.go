@@ -36,6 +36,7 @@ type Survey struct {
 	// [shot][delay]; Bands the same over all shots and delays, in sixteen bands of position from one end of the
 	// alias-free field to the other, with the number of values in BandCount. Only bands beyond the object are filled.
 	Power     [][]float64
+	NoiseGain []float64 // [shot] noise SD of one channel of a value over that of a raw sample
 	Bands     [16]float64
 	BandCount [16]float64
 }
@@ -73,7 +74,7 @@ func (v *Survey) viewProjections(a *acquisition.Acquisition, s Settings, c *Cons
 	v.OriginMM = (float64(centre) - zero) * a.PositionStepMM
 	for i, shot := range v.Shots {
 		v.allocate(i, a.PositionStepMM, viewMargin*c.ExtentMM/2, max(centre, a.Samples-1-centre))
-		v.DeltaK = append(v.DeltaK, 0)
+		v.DeltaK, v.NoiseGain = append(v.DeltaK, 0), append(v.NoiseGain, 1)
 		for d := range v.Delays {
 			corrector.Load(row, v.Delays[d], shot)
 			outside := 0.0
@@ -98,6 +99,7 @@ type traceView struct {
 	plan      *fft.Plan[complex128]
 	weight    []float64 // [sample]
 	energy    float64   // Σ weight²
+	quiet     []float64 // [sample] weights for the noise where one half of the echo is missing; else nil
 	extentMM  float64
 	zero      float64
 	trace     []complex64
@@ -115,13 +117,22 @@ func (v *Survey) viewTraces(a *acquisition.Acquisition, s Settings, c *Constants
 	for _, x := range w.weight {
 		w.energy += x * x
 	}
+	if !v.Symmetric {
+		w.quiet = quietWeights(a.Samples)
+	}
 	for i, shot := range v.Shots {
 		dk := acquisition.KPerNS(a.Strength(shot), a.DwellNS)
-		v.DeltaK = append(v.DeltaK, dk)
+		v.DeltaK, v.NoiseGain = append(v.DeltaK, dk), append(v.NoiseGain, dk*math.Sqrt(w.energy))
 		v.allocate(i, 1/(dk*float64(w.plan.Len())), viewMargin*c.ExtentMM/2, w.plan.Len()/2-1)
-		w.transform(v, shot)
+		w.transform(v, shot, w.weight)
 		for d := range v.Delays {
 			w.store(v, i, d, dk)
+		}
+		if w.quiet != nil {
+			w.transform(v, shot, w.quiet)
+		}
+		for d := range v.Delays {
+			w.storeBeyond(v, i, d)
 		}
 	}
 	for b := range v.Bands {
@@ -174,31 +185,49 @@ func viewWeights(samples int, zero float64, symmetric bool, dead int) []float64 
 	return out
 }
 
-func (w *traceView) transform(v *Survey, shot int) {
+// quietWeights fade a trace in and out slowly, so that half an echo does not start with a jump, which reaches far beyond
+// the object.
+func quietWeights(samples int) []float64 {
+	out := make([]float64, samples)
+	for j := range out {
+		out[j] = 0.5 - 0.5*math.Cos(2*math.Pi*(float64(j)+0.5)/float64(samples))
+	}
+	return out
+}
+
+func (w *traceView) transform(v *Survey, shot int, weight []float64) {
 	lanes := len(v.Delays)
 	clear(w.data)
 	for d, delay := range v.Delays {
 		w.corrector.Load(w.trace, delay, shot)
 		for j, value := range w.trace {
-			w.data[j*lanes+d] = complex128(value) * complex(w.weight[j], 0)
+			w.data[j*lanes+d] = complex128(value) * complex(weight[j], 0)
 		}
 	}
 	w.plan.Inverse(w.data, w.scratch, lanes)
 	w.zero = w.corrector.ZeroSample(shot)
 }
 
-// store takes positions near the object into the survey and what lies beyond into its powers.
+// store takes positions near the object into the survey.
 func (w *traceView) store(v *Survey, i, d int, dk float64) {
 	n, lanes, reach := w.plan.Len(), len(v.Delays), v.Reach[i]
 	for x := -reach; x <= reach; x++ {
 		turn := cmplx.Rect(dk, -2*math.Pi*float64(x)/float64(n)*w.zero)
 		v.Values[i][d][x+reach] = w.data[(x+n)%n*lanes+d] * turn
 	}
-	first := int(math.Ceil(0.7 * w.extentMM / v.StepMM[i]))
+}
+
+// storeBeyond takes what lies beyond the object into the powers of the survey.
+func (w *traceView) storeBeyond(v *Survey, i, d int) {
+	n, lanes, energy := w.plan.Len(), len(v.Delays), w.energy
+	if w.quiet != nil {
+		energy = 3.0 / 8 * float64(len(w.quiet)) // mean of sin⁴
+	}
+	first := int(math.Ceil(FarMM(w.a, w.extentMM) / v.StepMM[i]))
 	outside := 0.0
 	for x := first; x <= n-first; x++ {
 		value := w.data[x*lanes+d]
-		power := (real(value)*real(value) + imag(value)*imag(value)) / w.energy
+		power := (real(value)*real(value) + imag(value)*imag(value)) / energy
 		v.Power[i][d] += power
 		outside++
 		b := x * len(v.Bands) / n
@@ -206,6 +235,13 @@ func (w *traceView) store(v *Survey, i, d int, dk float64) {
 		v.BandCount[b]++
 	}
 	v.Power[i][d] /= math.Max(1, outside)
+}
+
+// FarMM returns the distance from the gradient centre beyond which hardly more than noise is left of an object of
+// extentMM: three radii, where the sampling leaves that much room, at least 1.4 radii. Closer by, the object shows through
+// the ends of the traces.
+func FarMM(a *acquisition.Acquisition, extentMM float64) float64 {
+	return math.Max(0.7*extentMM, math.Min(1.5*extentMM, 0.3*a.AliasFreeMM()))
 }
 
 // measureShifts finds the time zero of every shot from the symmetry of its echo. A projection is real; when k = 0 lies

@@ -1,0 +1,301 @@
+package quality
+
+import (
+	"math"
+	"sort"
+
+	"gonum.org/v1/gonum/mat"
+)
+
+// neighbour is a shot near another in direction; sign is -1 when it looks the opposite way, and its projection is
+// mirrored.
+type neighbour struct {
+	at     int
+	sign   float64
+	cosine float64
+}
+
+// neighbours returns the shots nearest to shot i in direction among those allowed, as axes, nearest first.
+func (s *Subject) neighbours(i, count int, allowed func(int) bool) []neighbour {
+	near := make([]neighbour, 0, count+1)
+	for j, n := range s.direction {
+		if j == i || !allowed(j) {
+			continue
+		}
+		m := s.direction[i]
+		c := n[0]*m[0] + n[1]*m[1] + n[2]*m[2]
+		one := neighbour{j, math.Copysign(1, c), math.Abs(c)}
+		if len(near) == count && one.cosine <= near[count-1].cosine {
+			continue
+		}
+		at := sort.Search(len(near), func(k int) bool { return near[k].cosine < one.cosine })
+		near = append(near, neighbour{})
+		copy(near[at+1:], near[at:])
+		near[at] = one
+		near = near[:min(len(near), count)]
+	}
+	return near
+}
+
+// neighbourCount is enough to fit a plane in 3D, or a straight line in 2D, with some to spare.
+func (s *Subject) neighbourCount() int { return 4 * (s.A.Dim - 1) }
+
+// at returns the profile of shot j at a position of shot i's grid, seen along sign times its direction, its strength
+// made 1. Grids differ only where gradient strengths do.
+func (s *Subject) at(j int, sign float64, mm float64) float64 {
+	x := sign*mm/s.V.StepMM[j] + float64(s.V.Reach[j])
+	low := int(math.Floor(x))
+	if low < 0 || low+1 >= len(s.profile[j]) {
+		if low+1 == len(s.profile[j]) && x == float64(low) {
+			return s.profile[j][low] / s.V.Strength[j]
+		}
+		return 0
+	}
+	f := x - float64(low)
+	return (s.profile[j][low]*(1-f) + s.profile[j][low+1]*f) / s.V.Strength[j]
+}
+
+// predictionWeights returns how the neighbours combine to the projection of shot i: the value in the middle of the plane
+// (3D) or line (2D) fitted through them over direction.
+func (s *Subject) predictionWeights(i int, near []neighbour) []float64 {
+	e1, e2 := tangents(s.direction[i])
+	rows := mat.NewDense(len(near), s.A.Dim, nil)
+	for k, n := range near {
+		v := s.direction[n.at]
+		rows.Set(k, 0, 1)
+		rows.Set(k, 1, n.sign*(v[0]*e1[0]+v[1]*e1[1]+v[2]*e1[2]))
+		if s.A.Dim == 3 {
+			rows.Set(k, 2, n.sign*(v[0]*e2[0]+v[1]*e2[1]+v[2]*e2[2]))
+		}
+	}
+	var normal, inverse mat.Dense
+	normal.Mul(rows.T(), rows)
+	for c := range s.A.Dim {
+		normal.Set(c, c, normal.At(c, c)+1e-9)
+	}
+	w := make([]float64, len(near))
+	if err := inverse.Inverse(&normal); err != nil && inverse.IsEmpty() {
+		return w
+	}
+	for k := range near {
+		for c := range s.A.Dim {
+			w[k] += inverse.At(0, c) * rows.At(k, c)
+		}
+	}
+	return w
+}
+
+// tangents returns two unit vectors at right angles to n and each other; the first lies in the x-y plane.
+func tangents(n [3]float64) (e1, e2 [3]float64) {
+	e1 = [3]float64{-n[1], n[0], 0}
+	if l := math.Hypot(n[0], n[1]); l > 1e-9 {
+		e1[0], e1[1] = e1[0]/l, e1[1]/l
+	} else {
+		e1 = [3]float64{1, 0, 0}
+	}
+	e2 = [3]float64{n[1]*e1[2] - n[2]*e1[1], n[2]*e1[0] - n[0]*e1[2], n[0]*e1[1] - n[1]*e1[0]}
+	return e1, e2
+}
+
+// misfitOf returns the distance of shot i from what its neighbours predict, root of the summed squares, over the size of
+// its own projection.
+func (s *Subject) misfitOf(i int, near []neighbour, weights []float64) float64 {
+	var off, own float64
+	for x, p := range s.profile[i] {
+		mm := float64(x-s.V.Reach[i]) * s.V.StepMM[i]
+		p /= s.V.Strength[i]
+		r := p
+		for k, n := range near {
+			r -= weights[k] * s.at(n.at, n.sign, mm)
+		}
+		off, own = off+r*r, own+p*p
+	}
+	return math.Sqrt(off / math.Max(own, math.SmallestNonzeroFloat64))
+}
+
+// pairMisfit is misfitOf against one other shot.
+func (s *Subject) pairMisfit(i int, other neighbour) float64 {
+	return s.misfitOf(i, []neighbour{other}, []float64{1})
+}
+
+const (
+	foreignTimes = 4    // the misfit of the surroundings
+	foreignFloor = 0.08 // of the projection
+)
+
+// compareNeighbours finds the shots that do not belong among their neighbours in direction. The worst is taken out and its
+// neighbours are compared anew, until none stands out, so that one bad shot does not drag others along.
+func (s *Subject) compareNeighbours(g *standing, taken map[int]bool) {
+	n := len(s.V.Shots)
+	g.misfit = make([]float64, n)
+	near := make([][]neighbour, n)
+	renew := func(i int) {
+		near[i] = s.neighbours(i, s.neighbourCount(), func(j int) bool { return !taken[j] })
+		g.misfit[i] = s.misfitOf(i, near[i], s.predictionWeights(i, near[i]))
+	}
+	for i := range n {
+		renew(i)
+	}
+	g.among, g.atRandom = median(s.misfitsKept(g, taken)), s.misfitAtRandom(taken)
+	for range n / 10 {
+		worst, limit := -1, 1.0
+		for i, m := range g.misfit {
+			if taken[i] {
+				continue
+			}
+			around := g.among
+			if len(near[i]) > 0 {
+				around = math.Max(around, s.misfitAround(g, near[i]))
+			}
+			if ratio := m / math.Max(foreignTimes*around, foreignFloor); ratio > limit {
+				worst, limit = i, ratio
+			}
+		}
+		if worst < 0 {
+			return
+		}
+		taken[worst] = true
+		g.foreign = union(g.foreign, []int{worst})
+		for i := range near {
+			for _, k := range near[i] {
+				if k.at == worst {
+					renew(i)
+					break
+				}
+			}
+		}
+	}
+}
+
+func (s *Subject) misfitsKept(g *standing, taken map[int]bool) []float64 {
+	var out []float64
+	for i, m := range g.misfit {
+		if !taken[i] {
+			out = append(out, m)
+		}
+	}
+	return out
+}
+
+// misfitAround returns the median misfit of a shot's neighbours. A neighbour that has the shot itself among its own is
+// the worse for it; the lower quartile forgives half of them.
+func (s *Subject) misfitAround(g *standing, near []neighbour) float64 {
+	var values []float64
+	for _, n := range near {
+		values = append(values, g.misfit[n.at])
+	}
+	return quantile(values, 0.25)
+}
+
+// misfitAtRandom returns the median misfit of shots against shots a third of the acquisition away.
+func (s *Subject) misfitAtRandom(taken map[int]bool) float64 {
+	n := len(s.V.Shots)
+	var values []float64
+	for i := range n {
+		for _, j := range []int{(i + n/3) % n, (i + n/2) % n} {
+			if j == i || taken[i] || taken[j] {
+				continue
+			}
+			a, b := s.direction[i], s.direction[j]
+			values = append(values, s.pairMisfit(i, neighbour{j, math.Copysign(1, a[0]*b[0]+a[1]*b[1]+a[2]*b[2]), 0}))
+		}
+	}
+	if len(values) == 0 {
+		return 0
+	}
+	return median(values)
+}
+
+var directionChecks = []Check{
+	{Name: "neighbours", Label: "shots against neighbours in direction", Needs: []Need{spokes, enoughShots},
+		Rule:   "a projection differs from what its neighbours in direction predict by less than 8 % or four times what is usual there",
+		Source: "own rule; projections change smoothly with direction",
+		Advice: "leave these shots out, or correct their gradients: two rows may have changed places", Run: foreignShots},
+	{Name: "gradient-order", Label: "gradients belong to their shots", Needs: []Need{spokes, enoughShots},
+		Rule:   "neighbours in direction are at least a third more alike than shots taken at random, unless all are alike",
+		Source: "own rule; projections change smoothly with direction",
+		Advice: "check the order of gradient_mT_per_m against the order of the shots", Run: gradientOrder},
+	{Name: "same-direction", Label: "repeated directions", Needs: []Need{spokes},
+		Rule: "shots along the same gradient agree within noise or 5 %", Source: "a measurement repeats itself",
+		Advice: "one of the rows of gradient_mT_per_m may be a copy; correct it or leave the shots out", Run: sameDirection},
+	{Name: "opposite-direction", Label: "opposite directions", Needs: []Need{spokes},
+		Rule: "shots along opposite gradients give mirrored projections within noise or 5 %", Source: "p(x, -n) = p(-x, n) for every object",
+		Advice: "look for a frequency offset, a wrong time zero or an unequal gradient of both signs", Run: oppositeDirection},
+}
+
+func enoughShots(s *Subject) bool { return len(s.V.Shots) > 3*s.neighbourCount() }
+
+func foreignShots(s *Subject) []Finding {
+	at := s.standing.foreign
+	if len(at) == 0 {
+		return []Finding{found(Fine, 100*s.standing.among, "%", "projections differ from what their neighbours predict by %.2g %%", 100*s.standing.among)}
+	}
+	worst := quantile(pick(s.standing.misfit, at), 1)
+	return []Finding{found(s.gravity(at), 100*worst, "%", "%s %s not like the neighbours in direction, by up to %.0f %% (usual: %.2g %%)",
+		counted(at, "shot"), are(at), 100*worst, 100*s.standing.among).excluding(s.shots(at))}
+}
+
+func gradientOrder(s *Subject) []Finding {
+	g := s.standing
+	// Noise alone makes neighbours and strangers differ alike, and so does a body that looks the same from everywhere.
+	noise := s.profileNoise()
+	telling := g.atRandom > 0.1 && g.atRandom > 3*noise
+	ratio := g.among / math.Max(g.atRandom, math.SmallestNonzeroFloat64)
+	if !telling {
+		return []Finding{found(Fine, ratio, "", "the object looks nearly the same from all directions; the order of the gradients cannot be told")}
+	}
+	level := Fine
+	if ratio > 2.0/3 {
+		level = Stop
+	}
+	return []Finding{found(level, ratio, "", "neighbours in direction differ by %.2g %%, shots taken at random by %.2g %%", 100*g.among, 100*g.atRandom)}
+}
+
+// profileNoise returns the noise of a profile over its size, median over the shots.
+func (s *Subject) profileNoise() float64 {
+	var out []float64
+	for i, p := range s.profile {
+		size := 0.0
+		for _, v := range p {
+			size += v * v
+		}
+		out = append(out, s.noise[i]*math.Sqrt(float64(len(p))/math.Max(size, math.SmallestNonzeroFloat64)))
+	}
+	return median(out)
+}
+
+// sameTurn is the cosine of half a degree, within which two directions count as one.
+const sameTurn = 0.99996
+
+func sameDirection(s *Subject) []Finding     { return s.pairs(1, "the same direction") }
+func oppositeDirection(s *Subject) []Finding { return s.pairs(-1, "opposite directions") }
+
+// pairs compares the shots whose directions are the same (sign 1) or opposite (sign -1).
+func (s *Subject) pairs(sign float64, words string) []Finding {
+	var misfits []float64
+	var bad []int
+	limit := math.Max(0.05, 5*s.profileNoise())
+	sound := s.notIn(union(union(s.standing.silent, s.standing.loud), s.standing.turned))
+	for a, i := range sound {
+		for _, j := range sound[a+1:] {
+			n, m := s.direction[i], s.direction[j]
+			if sign*(n[0]*m[0]+n[1]*m[1]+n[2]*m[2]) < sameTurn {
+				continue
+			}
+			misfit := s.pairMisfit(i, neighbour{j, sign, 1})
+			misfits = append(misfits, misfit)
+			if misfit > limit {
+				bad = union(bad, []int{i, j})
+			}
+		}
+	}
+	if len(misfits) == 0 {
+		return []Finding{found(Fine, 0, "%", "no two shots have %s", words)}
+	}
+	middle := median(misfits)
+	f := doubtIf(len(bad) > 0, 100*middle, "%", "%s of shots with %s differ by %.2g %%", counted(make([]int, len(misfits)), "pair"), words, 100*middle)
+	if len(bad) > 0 {
+		f.Text += "; too much for " + counted(bad, "shot")
+	}
+	return []Finding{f.onShots(s.shots(bad))}
+}
