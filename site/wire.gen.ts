@@ -202,6 +202,11 @@ export interface PlanRequest {
   workers: number;
 }
 
+export interface Point {
+  objective: number;
+  residual: number;
+}
+
 export interface Progress {
   stage: string;
   fraction: number;
@@ -231,6 +236,7 @@ export interface ReconstructRequest {
 export interface Reconstructed {
   noiseSD: number[];
   seconds: number;
+  curve: Point[][];
 }
 
 export interface Reconstruction {
@@ -242,6 +248,10 @@ export interface Reconstruction {
   density: string;
   tolerance: number;
   oversampling: number;
+  penalty: string;
+  penaltyWeight: number;
+  edgeStep: number;
+  iterations: number;
 }
 
 export interface SampleTime {
@@ -281,6 +291,12 @@ export interface Settings {
   frequencyDriftKHz: number;
   amplitudeDrift: number;
   deadSamples: number;
+  firstShot: number;
+  lastShot: number;
+  every: number;
+  readoutDecay: string;
+  readoutDecayPerUS: number;
+  readoutGainCap: number;
   excludeShots?: number[];
   excludeDelays?: number[];
 }

@@ -109,6 +109,9 @@ func (a *Acquisition) ImageShots() []int { return a.shotsWithRole(RoleImage) }
 // BaselineShots returns the indices of the off-resonance shots.
 func (a *Acquisition) BaselineShots() []int { return a.shotsWithRole(RoleOffResonance) }
 
+// ZeroGradientShots returns the indices of the shots that show line shape, phase and frequency only.
+func (a *Acquisition) ZeroGradientShots() []int { return a.shotsWithRole(RoleZeroGradient) }
+
 func (a *Acquisition) shotsWithRole(role int) []int {
 	var out []int
 	for s, r := range a.ShotRole {

@@ -49,6 +49,9 @@ func (sp *Spokes) rawVariance(i int, w []float64) float64 {
 		for _, side := range sidesOf(m) {
 			at := sp.Half + side
 			factor := weight
+			if sp.gain[i] != nil {
+				factor *= sp.gain[i][m]
+			}
 			if m >= sp.OneSided[i] {
 				factor *= 2
 			}

@@ -33,6 +33,18 @@ type Settings struct {
 	// k-space they would have given are taken from the others by the resampler, which knows that the object is finite.
 	DeadSamples int `json:"deadSamples"`
 
+	// A subset of the image shots, to see what fewer would have done: of those from FirstShot to LastShot in the order of
+	// the file (LastShot 0: to the end), every Every-th (0 or 1: all).
+	FirstShot int `json:"firstShot"`
+	LastShot  int `json:"lastShot"`
+	Every     int `json:"every"`
+
+	// The readout decay is undone by multiplying samples at |t| from k = 0 with exp(rate·|t|), up to a cap: where the signal
+	// is gone there is only noise to multiply.
+	ReadoutDecay      string  `json:"readoutDecay"` // a row of ReadoutDecays; "" is none
+	ReadoutDecayPerUS float64 `json:"readoutDecayPerUS"`
+	ReadoutGainCap    float64 `json:"readoutGainCap"` // largest factor; 0 is 1, no factor at all
+
 	ExcludeShots  []int `json:"excludeShots,omitempty"`  // shots that do not enter the image, zero-based
 	ExcludeDelays []int `json:"excludeDelays,omitempty"` // delays that are not used, zero-based
 }
@@ -65,9 +77,16 @@ var ShotTimes = []Choice{
 	{"own", "each shot's own", "put k = 0 of every shot where its echo is symmetric, measured over all delays together"},
 }
 
+// ReadoutDecays are the ways to find the decay along the traces.
+var ReadoutDecays = []Choice{
+	{"none", "leave", "leave the decay along the traces; it blurs the image as a Lorentzian of its rate"},
+	{"typed", "typed in", "undo a decay of the rate entered"},
+	{"zero-gradient", "zero-gradient shots", "measure the rate on the zero-gradient shots (shot_role 1), where the trace is nothing but the decay"},
+}
+
 // Defaults returns trace-ends, reference-delay and nothing else.
 func Defaults() Settings {
-	return Settings{Offset: "trace-ends", Phase: "reference-delay", ShotPhase: "none", ShotTime: "none"}
+	return Settings{Offset: "trace-ends", Phase: "reference-delay", ShotPhase: "none", ShotTime: "none", Every: 1, ReadoutDecay: "none", ReadoutGainCap: 3}
 }
 
 // Check returns a bad-setting fault for a value that is not known or not in range.
@@ -75,7 +94,8 @@ func (s Settings) Check() error {
 	for _, c := range []struct {
 		rows        []Choice
 		value, path string
-	}{{Offsets, s.Offset, "offset"}, {Phases, s.Phase, "phase"}, {ShotPhases, orNone(s.ShotPhase), "shotPhase"}, {ShotTimes, orNone(s.ShotTime), "shotTime"}} {
+	}{{Offsets, s.Offset, "offset"}, {Phases, s.Phase, "phase"}, {ShotPhases, orNone(s.ShotPhase), "shotPhase"}, {ShotTimes, orNone(s.ShotTime), "shotTime"},
+		{ReadoutDecays, orNone(s.ReadoutDecay), "readoutDecay"}} {
 		if !named(c.rows, c.value) {
 			return fault.New(fault.BadSetting, "recipe conditioning."+c.path, "%q is not known; use %s", c.value, listed(c.rows))
 		}
@@ -105,6 +125,11 @@ func (s Settings) numbers() []ranged {
 		{"frequencyDriftKHz", s.FrequencyDriftKHz, -1e5, 1e5},
 		{"amplitudeDrift", s.AmplitudeDrift, -1.8, 1.8},
 		{"deadSamples", float64(s.DeadSamples), 0, 1e6},
+		{"firstShot", float64(s.FirstShot), 0, 1e9},
+		{"lastShot", float64(s.LastShot), 0, 1e9},
+		{"every", float64(s.Every), 0, 1e9},
+		{"readoutDecayPerUS", s.ReadoutDecayPerUS, 0, 1e3},
+		{"readoutGainCap", s.ReadoutGainCap, 0, 1e3},
 	}
 }
 
@@ -135,9 +160,20 @@ func listed(rows []Choice) string {
 	return text
 }
 
-// KeptShots returns the image shots that are not excluded, in acquisition order.
+// KeptShots returns the image shots of the subset that are not excluded, in acquisition order.
 func (s Settings) KeptShots(a *acquisition.Acquisition) []int {
-	return without(a.ImageShots(), s.ExcludeShots)
+	var subset []int
+	taken := 0
+	for _, shot := range a.ImageShots() {
+		if shot < s.FirstShot || s.LastShot > 0 && shot > s.LastShot {
+			continue
+		}
+		if taken%max(1, s.Every) == 0 {
+			subset = append(subset, shot)
+		}
+		taken++
+	}
+	return without(subset, s.ExcludeShots)
 }
 
 // KeptDelays returns the delays that are not excluded, in the order of the file.

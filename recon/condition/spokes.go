@@ -32,6 +32,7 @@ type Spokes struct {
 
 	rawSD []float64    // [delay] SD of one channel of one raw sample
 	from  []*Resampler // [shot] how samples came out of a trace; nil for projections
+	gain  [][]float64  // [shot][m] by which the readout decay was undone; nil where it was not
 }
 
 // Geometry says which band and which part of k-space are needed.
@@ -65,6 +66,13 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 		return nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
 	}
 	sp := newSpokes(a, s, g, delays)
+	rate, err := readoutRate(a, s)
+	if err != nil {
+		return nil, err
+	}
+	for i, shot := range sp.Shot {
+		sp.gain[i] = readoutGains(a, s, rate, sp.DeltaK, sp.Half, shot)
+	}
 	for _, d := range delays {
 		sp.NoiseDensity = append(sp.NoiseDensity, noiseDensity(a, c, sp.Shot, d))
 		sp.rawSD = append(sp.rawSD, c.NoiseSD[d])
@@ -83,6 +91,7 @@ func newSpokes(a *acquisition.Acquisition, s Settings, g Geometry, delays []int)
 	sp.Samples = make([]complex64, len(sp.Shot)*(sp.Half+1)*len(delays))
 	sp.OneSided = make([]int, len(sp.Shot))
 	sp.from = make([]*Resampler, len(sp.Shot))
+	sp.gain = make([][]float64, len(sp.Shot))
 	for _, s := range sp.Shot {
 		n, strength := a.GradientMTPerM[s], a.Strength(s)
 		sp.Directions = append(sp.Directions, [3]float64{n[0] / strength, n[1] / strength, n[2] / strength})
@@ -163,6 +172,9 @@ func (r *reader) fill(i int) error {
 		r.corrector.Load(r.work, r.sp.Delays[d], r.sp.Shot[i])
 		for m := range r.sp.Half + 1 {
 			value, sides := r.hermitian(resampler, m)
+			if gain := r.sp.gain[i]; gain != nil {
+				value *= complex(gain[m], 0)
+			}
 			r.sp.Row(i, m)[d] = complex64(value * r.turn)
 			if sides == 1 {
 				r.sp.OneSided[i] = min(r.sp.OneSided[i], m)

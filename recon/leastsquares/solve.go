@@ -8,8 +8,8 @@ import (
 
 // Point is one point of the curve of convergence of one delay. Both are shares of what an image of zeros has.
 type Point struct {
-	Objective float64 // what is minimised, penalty included; never rises
-	Residual  float64 // root of the data term: the part of the measured signal that the image does not explain
+	Objective float64 `json:"objective"` // what is minimised, penalty included; never rises
+	Residual  float64 `json:"residual"`  // root of the data term: the part of the measured signal that the image does not explain
 }
 
 // solver runs conjugate gradients for a group of delays in step. Vectors are [supported voxel][column].
@@ -42,7 +42,7 @@ func newSolver(p *problem, right []float32, energy []float64, rule rule) *solver
 // begin renews the rule and starts afresh from the image so far.
 func (s *solver) begin() {
 	s.rule.renew(s.image)
-	s.apply(s.image)
+	s.apply(s.image, nil)
 	for i, v := range s.right {
 		s.residual[i] = v - s.applied[i]
 	}
@@ -51,16 +51,16 @@ func (s *solver) begin() {
 }
 
 // apply puts (E*wE + λR) f into applied.
-func (s *solver) apply(f []float32) {
+func (s *solver) apply(f []float32, progress func(float64)) {
 	s.p.scatter(s.box, f, s.width)
-	s.work.Apply(s.box, nil)
+	s.work.Apply(s.box, progress)
 	s.p.gather(s.applied, s.box, s.width)
 	s.rule.add(s.applied, f)
 }
 
 // step does one iteration.
-func (s *solver) step() {
-	s.apply(s.direction)
+func (s *solver) step(progress func(float64)) {
+	s.apply(s.direction, progress)
 	length := s.perColumn(ratio(s.square, s.p.dot(s.direction, s.applied, s.delays)))
 	s.addScaled(s.image, s.direction, length, 1)
 	s.addScaled(s.residual, s.applied, length, -1)

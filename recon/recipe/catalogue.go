@@ -2,6 +2,7 @@ package recipe
 
 import (
 	"torrloom/recon/condition"
+	"torrloom/recon/leastsquares"
 	"torrloom/recon/sampling"
 	"torrloom/recon/singlepoint"
 	"torrloom/recon/volume"
@@ -34,11 +35,14 @@ type Choice struct {
 var Methods = []Choice{
 	{"back-projection", "back-projection", "filtered back-projection: |k| (2D) or k² (3D) times the window, smeared back"},
 	{"gridding", "gridding", "the weighted sum over all k-space samples, made fast by a Kaiser-Bessel kernel; same sum as back-projection, no interpolation of projections"},
+	{"least-squares", "least squares", "the image whose spokes come closest to the measured ones, held down by a penalty; conjugate gradients from the gridded image"},
 	{"single-point", "single-point", "for single-point encoding: each sample time is its own k-space, all brought to one field of view"},
 }
 
 var (
-	weighing = []string{"gridding"}
+	weighing = []string{"gridding", "least-squares"}
+	gridding = []string{"gridding"}
+	solving  = []string{"least-squares"}
 	single   = []string{"single-point"}
 )
 
@@ -57,10 +61,18 @@ func Catalogue() []Setting {
 			Help: "Where the window ends, as a fraction of the largest k that every spoke reaches."},
 		{Path: "reconstruction.density", Group: "Reconstruction", Label: "Density weights", Kind: "choice", Choices: densityChoices(), Methods: weighing, Stage: "reconstruct",
 			Help: "How much of k-space each sample stands for."},
-		{Path: "reconstruction.tolerance", Group: "Reconstruction", Label: "Kernel tolerance", Kind: "number", Min: 1e-6, Max: 0.1, Step: 0.001, Methods: weighing, Stage: "reconstruct",
+		{Path: "reconstruction.tolerance", Group: "Reconstruction", Label: "Kernel tolerance", Kind: "number", Min: 1e-6, Max: 0.1, Step: 0.001, Methods: gridding, Stage: "reconstruct",
 			Help: "Relative error of the gridding kernel; its width follows from it."},
-		{Path: "reconstruction.oversampling", Group: "Reconstruction", Label: "Grid oversampling", Kind: "number", Min: 1.25, Max: 2, Step: 0.25, Methods: weighing, Stage: "reconstruct",
+		{Path: "reconstruction.oversampling", Group: "Reconstruction", Label: "Grid oversampling", Kind: "number", Min: 1.25, Max: 2, Step: 0.25, Methods: gridding, Stage: "reconstruct",
 			Help: "Cells of the gridding grid per voxel and axis. More memory, narrower kernel."},
+		{Path: "reconstruction.penalty", Group: "Reconstruction", Label: "Penalty", Kind: "choice", Choices: penaltyChoices(), Methods: solving, Stage: "reconstruct",
+			Help: "What is held down beside the misfit."},
+		{Path: "reconstruction.penaltyWeight", Group: "Reconstruction", Label: "Penalty weight", Kind: "number", Min: 0, Max: 100, Step: 0.001, Methods: solving, Stage: "reconstruct",
+			Help: "As a share of the misfit: 0.001 smooths next to nothing, 0.1 much."},
+		{Path: "reconstruction.edgeStep", Group: "Reconstruction", Label: "Edge", Unit: "of the height", Kind: "number", Min: 0.001, Max: 10, Step: 0.01, Methods: solving, Stage: "reconstruct",
+			Help: "For the edge-preserving penalty: the step between neighbouring voxels that counts as an edge."},
+		{Path: "reconstruction.iterations", Group: "Reconstruction", Label: "Iterations", Kind: "integer", Min: 1, Max: 200, Step: 1, Methods: solving, Stage: "reconstruct",
+			Help: "Of the conjugate gradients. More sharpen and let noise grow; the residual curve shows when no more is gained."},
 		{Path: "singlePoint.axis", Group: "Single point", Label: "Images along", Kind: "choice", Choices: choicesOf(singlepoint.Axes), Methods: single, Stage: "measure",
 			Help: "What the rate is fitted over."},
 		{Path: "singlePoint.firstUS", Group: "Single point", Label: "First sample time", Unit: "µs", Kind: "number", Min: 0, Max: 1e4, Step: 0.01, Methods: single, Stage: "measure",
@@ -95,6 +107,18 @@ func Catalogue() []Setting {
 			Help: "Signal of the last shot less that of the first, over the signal in the middle."},
 		{Path: "conditioning.deadSamples", Group: "Conditioning", Label: "Dead samples", Kind: "integer", Min: 0, Max: 1e6, Step: 1, Stage: "measure",
 			Help: "Samples after k = 0 that are not used, because the receiver was not ready."},
+		{Path: "conditioning.firstShot", Group: "Subset of shots", Label: "First shot", Kind: "integer", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
+			Help: "Shots before this one, numbered from 0 in the order of the file, are left out."},
+		{Path: "conditioning.lastShot", Group: "Subset of shots", Label: "Last shot", Kind: "integer", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
+			Help: "Shots after this one are left out. 0: to the end."},
+		{Path: "conditioning.every", Group: "Subset of shots", Label: "Every n-th", Kind: "integer", Min: 1, Max: 1e9, Step: 1, Stage: "measure",
+			Help: "Keeps one image shot in so many: what fewer projections would have given."},
+		{Path: "conditioning.readoutDecay", Group: "Readout decay", Label: "Decay", Kind: "choice", Choices: choicesOf(condition.ReadoutDecays), Stage: "measure",
+			Help: "Whether the decay along each trace, which blurs, is undone."},
+		{Path: "conditioning.readoutDecayPerUS", Group: "Readout decay", Label: "Rate", Unit: "1/µs", Kind: "number", Min: 0, Max: 1000, Step: 0.05, Stage: "measure",
+			Help: "Rate of the decay, where it is typed in. Undone at twice the rate, an object gets rims."},
+		{Path: "conditioning.readoutGainCap", Group: "Readout decay", Label: "Largest gain", Kind: "number", Min: 0, Max: 1000, Step: 0.5, Stage: "measure",
+			Help: "Samples are multiplied by at most this, since where the signal is gone only noise grows."},
 		{Path: "conditioning.excludeShots", Group: "Conditioning", Label: "Leave out shots", Kind: "list", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
 			Help: "Numbers of shots, from 0, that do not enter the image; weights are made anew from the others."},
 		{Path: "conditioning.excludeDelays", Group: "Conditioning", Label: "Leave out delays", Kind: "list", Min: 0, Max: 1e9, Step: 1, Stage: "measure",
@@ -134,6 +158,14 @@ func Catalogue() []Setting {
 		{Path: "mask.amplitudeFraction", Group: "Mask", Label: "Mask level", Unit: "of strongest", Kind: "number", Min: 0, Max: 1, Step: 0.05, Stage: "derive",
 			Help: "Voxels whose amplitude at the reference delay is below this fraction of the strongest are left out."},
 	}
+}
+
+func penaltyChoices() []Choice {
+	var out []Choice
+	for _, p := range leastsquares.Penalties {
+		out = append(out, Choice{p.Name, p.Label, p.Help})
+	}
+	return out
 }
 
 func densityChoices() []Choice {

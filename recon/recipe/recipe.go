@@ -10,6 +10,7 @@ import (
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/condition"
+	"torrloom/recon/leastsquares"
 	"torrloom/recon/oxygen"
 	"torrloom/recon/singlepoint"
 )
@@ -34,10 +35,14 @@ type Reconstruction struct {
 	Matrix        int     `json:"matrix"`
 	FieldOfViewMM float64 `json:"fieldOfViewMM"`
 	Window        string  `json:"window"`
-	Cutoff        float64 `json:"cutoff"`       // fraction of k_max
-	Density       string  `json:"density"`      // row of sampling.Densities; methods that weigh samples
-	Tolerance     float64 `json:"tolerance"`    // relative error of the gridding kernel
-	Oversampling  float64 `json:"oversampling"` // of the gridding grid
+	Cutoff        float64 `json:"cutoff"`        // fraction of k_max
+	Density       string  `json:"density"`       // row of sampling.Densities; methods that weigh samples
+	Tolerance     float64 `json:"tolerance"`     // relative error of the gridding kernel
+	Oversampling  float64 `json:"oversampling"`  // of the gridding grid
+	Penalty       string  `json:"penalty"`       // row of leastsquares.Penalties
+	PenaltyWeight float64 `json:"penaltyWeight"` // as a share of the data term
+	EdgeStep      float64 `json:"edgeStep"`      // step that counts as an edge, as a share of the image's height
+	Iterations    int     `json:"iterations"`    // of least squares
 }
 
 // SinglePoint chooses the sample times of single-point data and what the images run along.
@@ -68,11 +73,12 @@ type Mask struct {
 // Of single-point data the sample times are those whose field of view holds the object, and the images run along them
 // unless there are several delays.
 func Defaults(a *acquisition.Acquisition, extentMM float64) Recipe {
+	ls := leastsquares.Defaults()
 	r := Recipe{
 		Recipe:       Version,
 		Conditioning: condition.Defaults(),
 		Reconstruction: Reconstruction{Method: "back-projection", Window: "hann", Cutoff: 1, Density: "solid-angle",
-			Tolerance: 1e-3, Oversampling: 1.5},
+			Tolerance: 1e-3, Oversampling: 1.5, Penalty: ls.Penalty, PenaltyWeight: ls.Weight, EdgeStep: ls.Edge, Iterations: ls.Iterations},
 		SinglePoint: SinglePoint{Axis: "sample-time", Count: 12, Resolution: "common"},
 		Calibration: fileCalibration(a),
 		Mask:        Mask{AmplitudeFraction: 0.2},
@@ -99,14 +105,17 @@ func (r *Recipe) singlePointDefaults(a *acquisition.Acquisition, extentMM float6
 	if err != nil {
 		return extentMM // the same fault follows when the images are planned
 	}
-	covering := coverage.Covering(extentMM)
-	if len(covering) == 0 {
+	first, last, err := coverage.Suggest(extentMM)
+	if err != nil {
 		return extentMM
 	}
-	first, last := coverage.Times[covering[0]], coverage.Times[covering[len(covering)-1]]
-	// The earliest third resolves least; all images are as sharp as the earliest.
-	r.SinglePoint.FirstUS, r.SinglePoint.LastUS = math.Max(first.TimeUS, last.TimeUS/3), last.TimeUS
-	return last.ResolutionMM
+	r.SinglePoint.FirstUS, r.SinglePoint.LastUS = first, last
+	for _, t := range coverage.Times {
+		if t.Usable && t.TimeUS >= first {
+			return t.ResolutionMM // all images are as sharp as the earliest
+		}
+	}
+	return extentMM
 }
 
 func defaultMatrix(dim int, fieldOfViewMM, resolutionMM float64) int {

@@ -127,9 +127,7 @@ func sphericalRegions(axes [][3]float64) ([]float64, error) {
 		return nil, fault.New(fault.NoAnswer, "gradient_mT_per_m", "%d distinct spoke axes in 3D; at least 3 that span space are needed", len(axes))
 	}
 	points := make([][3]float64, 0, 2*len(axes))
-	for _, n := range axes {
-		points = append(points, n)
-	}
+	points = append(points, axes...)
 	for _, n := range axes {
 		points = append(points, [3]float64{-n[0], -n[1], -n[2]})
 	}

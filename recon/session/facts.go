@@ -45,56 +45,40 @@ func Survey(a *acquisition.Acquisition) (*Facts, error) {
 	return f, nil
 }
 
-// surveySinglePoint finds the object in a coarse image of the earliest usable sample time, whose field of view is the
-// largest.
+// surveySinglePoint measures the object in the images of single sample times.
 func surveySinglePoint(a *acquisition.Acquisition) (*Facts, error) {
 	coverage, err := singlepoint.Describe(a, 0)
 	if err != nil {
 		return nil, err
 	}
-	usable := coverage.Covering(0)
-	if len(usable) == 0 {
-		return nil, noSampleTime()
+	f := &Facts{Coverage: coverage}
+	if f.ExtentMM, err = singlepoint.Extent(a, singlepoint.Defaults()); err != nil {
+		return nil, err
 	}
+	usable := coverage.Covering(0) // not empty, or Extent has no answer
 	first, last := coverage.Times[usable[0]], coverage.Times[usable[len(usable)-1]]
-	f := &Facts{Coverage: coverage, KMaxPerMM: last.KMaxPerMM, ResolutionMM: last.ResolutionMM, AliasFreeMM: first.FieldOfViewMM}
-	g, err := volume.Cube(a.Dim, coarseMatrix, first.FieldOfViewMM)
+	f.KMaxPerMM, f.ResolutionMM, f.AliasFreeMM = last.KMaxPerMM, last.ResolutionMM, first.FieldOfViewMM
+	g, err := volume.Cube(a.Dim, 2, first.FieldOfViewMM)
 	if err != nil {
 		return nil, err
 	}
-	s := singlepoint.Defaults()
-	s.Window = "hann"
-	p, warnings, err := singlepoint.Prepare(a, s, g, []int{first.Sample})
+	p, warnings, err := singlepoint.Prepare(a, singlepoint.Defaults(), g, []int{first.Sample})
 	if err != nil {
 		return nil, err
 	}
-	images, err := singlepoint.Images(a, s, p, g, []int{0}, nil)
-	if err != nil {
-		return nil, err
-	}
-	f.Warnings = warnings
-	f.ExtentMM = math.Min(extentOf(g, images.Values), first.FieldOfViewMM)
-	f.SignalToNoise = strongest(images.Values) / images.NoiseSD[0]
+	f.Warnings, f.SignalToNoise = warnings, strongestSample(a, first.Sample)/p.NoiseSD
 	return f, nil
 }
 
-// coarseMatrix is enough to find an object; its rim is taken a voxel wider.
-const coarseMatrix = 32
-
-// extentOf returns the diameter around the gradient centre of the voxels above a tenth of the strongest.
-func extentOf(g volume.Grid, image []float32) float64 {
-	level, farthest := 0.1*strongest(image), 0.0
-	for iz := range g.N[2] {
-		for iy := range g.N[1] {
-			for ix := range g.N[0] {
-				if float64(image[g.Index(ix, iy, iz)]) >= level {
-					x, y, z := g.MM(0, ix), g.MM(1, iy), g.MM(2, iz)
-					farthest = math.Max(farthest, math.Sqrt(x*x+y*y+z*z))
-				}
-			}
-		}
+// strongestSample returns the largest magnitude over the shots of one sample time at the reference delay: the signal at
+// k = 0.
+func strongestSample(a *acquisition.Acquisition, sample int) float64 {
+	most := 0.0
+	for s := range a.Shots {
+		v := complex128(a.Trace(a.ReferenceDelay(), s)[sample])
+		most = math.Max(most, math.Hypot(real(v), imag(v)))
 	}
-	return 2*farthest + g.VoxelMM[0]
+	return most
 }
 
 // DefaultRecipe returns the recipe that an acquisition with these facts starts with.

@@ -96,7 +96,3 @@ func (f Frames) fitter(a *acquisition.Acquisition, r recipe.Recipe, noiseSD []fl
 	}
 	return nil, fault.New(fault.Unsupported, "sequence", "there is no rate model for %s", sequence)
 }
-
-func noSampleTime() error {
-	return fault.New(fault.NoAnswer, "gradient_mT_per_m", "no sample time after k = 0 has a k-space of its own; check time_zero_sample and the gradients")
-}

@@ -5,6 +5,7 @@ import (
 	"torrloom/recon/backproject"
 	"torrloom/recon/condition"
 	"torrloom/recon/gridding"
+	"torrloom/recon/leastsquares"
 	"torrloom/recon/recipe"
 	"torrloom/recon/sampling"
 	"torrloom/recon/singlepoint"
@@ -19,36 +20,66 @@ type spokeJob struct {
 	g        volume.Grid
 	r        recipe.Reconstruction
 	window   []float64 // [m]
+	noise    func(realisations int) (*condition.Spokes, error)
 	progress func(float64)
 }
 
-// spokeMethods holds the reconstruction behind every row of recipe.Methods that takes spokes: images [delay][voxel] and
-// the predicted noise SD of a voxel per delay.
-var spokeMethods = map[string]func(j spokeJob) ([]float32, []float64, error){
+// spokeMethods holds the reconstruction behind every row of recipe.Methods that takes spokes.
+var spokeMethods = map[string]func(j spokeJob) (*Images, error){
 	"back-projection": backProjected,
 	"gridding":        gridded,
+	"least-squares":   solved,
 }
 
-func backProjected(j spokeJob) ([]float32, []float64, error) {
+func backProjected(j spokeJob) (*Images, error) {
 	axis, err := sampling.AxisWeights(j.sp.Dim, j.sp.Directions)
 	if err != nil {
-		return nil, nil, err
+		return nil, err
 	}
 	filter := sampling.Ramp(j.sp.Dim, j.sp.Half, j.sp.DeltaK)
 	for m, w := range j.window {
 		filter[m] *= w
 	}
-	return backproject.Images(j.sp, j.g, axis, filter, j.progress), j.sp.NoiseSD(axis, filter), nil
+	return &Images{Values: backproject.Images(j.sp, j.g, axis, filter, j.progress), NoiseSD: j.sp.NoiseSD(axis, filter)}, nil
 }
 
-func gridded(j spokeJob) ([]float32, []float64, error) {
+func gridded(j spokeJob) (*Images, error) {
 	weights, err := j.weights()
 	if err != nil {
-		return nil, nil, err
+		return nil, err
 	}
 	s := gridding.Settings{Tolerance: j.r.Tolerance, Oversampling: j.r.Oversampling}
 	values, err := gridding.Images(j.sp, j.g, weights, s, j.progress)
-	return values, j.sp.NoiseSDOf(weights), err
+	if err != nil {
+		return nil, err
+	}
+	return &Images{Values: values, NoiseSD: j.sp.NoiseSDOf(weights)}, nil
+}
+
+// noiseRealisations is how many images of pure noise least squares solves beside each job, to learn what is left of it: one
+// in 3D has thousands of voxels, 2D takes a few.
+func noiseRealisations(dim int) int {
+	if dim == 3 {
+		return 1
+	}
+	return 6
+}
+
+func solved(j spokeJob) (*Images, error) {
+	weights, err := j.weights()
+	if err != nil {
+		return nil, err
+	}
+	noise, err := j.noise(noiseRealisations(j.sp.Dim))
+	if err != nil {
+		return nil, err
+	}
+	s := leastsquares.Settings{Penalty: j.r.Penalty, Weight: j.r.PenaltyWeight, Edge: j.r.EdgeStep, Iterations: j.r.Iterations}
+	out, err := leastsquares.Images(j.sp, noise, j.g, weights, s, j.progress)
+	if err != nil {
+		return nil, err
+	}
+	return &Images{Values: out.Values, NoiseSD: out.NoiseSD, Curve: out.Curve}, nil
 }
 
 // weights returns the density weights times the window, [shot][m].
@@ -68,7 +99,8 @@ func (j spokeJob) weights() ([]float64, error) {
 // spokeImages conditions the spokes of some delays and makes their images.
 func spokeImages(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Constants, g volume.Grid, delays []int, progress func(float64)) (*Images, error) {
 	cut, _ := kCut(a, r)
-	sp, err := condition.Condition(a, r.Conditioning, c, condition.Plan(a, c, r.Reconstruction.FieldOfViewMM, cut), delays)
+	geometry := condition.Plan(a, c, r.Reconstruction.FieldOfViewMM, cut)
+	sp, err := condition.Condition(a, r.Conditioning, c, geometry, delays)
 	if err != nil {
 		return nil, err
 	}
@@ -77,11 +109,10 @@ func spokeImages(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Const
 		return nil, err
 	}
 	j := spokeJob{sp: sp, g: g, r: r.Reconstruction, window: w.Sample(sp.Half, sp.DeltaK, cut), progress: progress}
-	values, noise, err := spokeMethods[r.Reconstruction.Method](j)
-	if err != nil {
-		return nil, err
+	j.noise = func(realisations int) (*condition.Spokes, error) {
+		return leastsquares.Noise(a, r.Conditioning, c, geometry, realisations)
 	}
-	return &Images{Values: values, NoiseSD: noise}, nil
+	return spokeMethods[r.Reconstruction.Method](j)
 }
 
 // singlePointSettings takes the settings of single-point reconstruction from a recipe.

@@ -124,12 +124,15 @@ func estimate(a *acquisition.Acquisition, r recipe.Recipe, g volume.Grid, extent
 	if slices.Contains(gridders, r.Reconstruction.Method) {
 		work += int64(float64(images) * math.Pow(r.Reconstruction.Oversampling, float64(a.Dim)))
 	}
+	if r.Reconstruction.Method == "least-squares" {
+		work += images/int64(inJob)*int64(inJob+noiseRealisations(a.Dim))*4 + int64(g.Voxels())<<a.Dim*8 // vectors, and the doubled grid
+	}
 	fit := int64(g.Voxels()) * int64(4*frames+4*6)
 	return a.Bytes() + max(work, fit)
 }
 
 // gridders are the methods that hold an oversampled grid beside the images.
-var gridders = []string{"gridding"}
+var gridders = []string{"gridding", "least-squares"}
 
 func keysOf(dataHash string, r recipe.Recipe) Keys {
 	var k Keys

@@ -7,6 +7,7 @@ import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/condition"
 	"torrloom/recon/fault"
+	"torrloom/recon/leastsquares"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
 	"torrloom/recon/singlepoint"
@@ -55,6 +56,8 @@ func kCut(a *acquisition.Acquisition, r recipe.Recipe) (cut, matrixLimit float64
 type Images struct {
 	Values  []float32 // [frame][voxel]
 	NoiseSD []float64 // [frame] predicted SD of a voxel
+
+	Curve [][]leastsquares.Point // [frame][iteration] of an iterative method; nil otherwise
 }
 
 // Reconstruct returns the images of some frames. Progress, which may be nil, is told the fraction done.

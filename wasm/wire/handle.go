@@ -213,7 +213,7 @@ func handleReconstruct(e *Engine, body []byte, _ [][]byte, progress func(Progres
 	if err != nil {
 		return nil, nil, err
 	}
-	return Reconstructed{NoiseSD: images.NoiseSD, Seconds: time.Since(start).Seconds()}, [][]byte{bytesOf(images.Values)}, nil
+	return Reconstructed{NoiseSD: images.NoiseSD, Curve: images.Curve, Seconds: time.Since(start).Seconds()}, [][]byte{bytesOf(images.Values)}, nil
 }
 
 func tell(progress func(Progress), stage string) func(float64) {

@@ -11,6 +11,7 @@ package wire
 import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
+	"torrloom/recon/leastsquares"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
 	"torrloom/recon/singlepoint"
@@ -137,6 +138,8 @@ type ReconstructRequest struct {
 type Reconstructed struct {
 	NoiseSD []float64 `json:"noiseSD"` // predicted noise SD of a voxel, per frame of the request
 	Seconds float64   `json:"seconds"`
+
+	Curve [][]leastsquares.Point `json:"curve"` // [frame][iteration] of an iterative method; empty otherwise
 }
 
 // FitRequest asks for the rates of voxels. The buffer is float32 [frame][voxel] over the job's voxels, all frames.
