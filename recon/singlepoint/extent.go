@@ -36,12 +36,24 @@ func Extent(a *acquisition.Acquisition, s Settings) (float64, error) {
 	at := all[0]
 	for {
 		extent, err := extentAt(a, s, at, c.Times[at].FieldOfViewMM)
-		covering := c.Covering(extentRoom * extent)
-		if err != nil || len(covering) == 0 || covering[len(covering)-1] <= at {
+		next := c.latest(extentRoom * extent)
+		if next <= at {
+			next = c.latest(extent) // right after the pulse, each sample halves the field of view
+		}
+		if err != nil || next <= at {
 			return extent, err
 		}
-		at = covering[len(covering)-1]
+		at = next
 	}
+}
+
+// latest returns the last sample that covers extentMM, -1 if there is none.
+func (c *Coverage) latest(extentMM float64) int {
+	covering := c.Covering(extentMM)
+	if len(covering) == 0 {
+		return -1
+	}
+	return covering[len(covering)-1]
 }
 
 // extentAt measures at one sample time, in its own field of view.

@@ -156,14 +156,9 @@ func TestNoiseIsMeasuredWithAndWithoutOppositeGradients(t *testing.T) {
 // noise measured from the data.
 func TestFreeDecayGivesTheKnownRateWithItsError(t *testing.T) {
 	const rate = 0.9
-	var model relax.Model
-	for _, m := range relax.Models {
-		if m.Sequence == acquisition.FreeDecay {
-			model = m
-		}
-	}
-	if model.Curve == nil {
-		model, _ = relax.For(acquisition.EchoDecay) // the same curve
+	model, err := relax.For(acquisition.FreeDecay)
+	if err != nil {
+		t.Fatal(err)
 	}
 	object := phantom.Sum(3, ball(3, [3]float64{0.4, 0.2, -0.3}, 5, 1, 0.7))
 	g := cube(t, 3, 12, 12)
