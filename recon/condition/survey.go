@@ -100,7 +100,7 @@ type traceView struct {
 	weight    []float64 // [sample]
 	energy    float64   // Σ weight²
 	quiet     []float64 // [sample] weights for the noise where one half of the echo is missing; else nil
-	extentMM  float64
+	farMM     float64   // FarMM of the object
 	zero      float64
 	trace     []complex64
 	data      []complex128 // [position][delay]
@@ -108,7 +108,7 @@ type traceView struct {
 }
 
 func (v *Survey) viewTraces(a *acquisition.Acquisition, s Settings, c *Constants) {
-	w := &traceView{a: a, corrector: NewCorrector(a, s, c, v.Delays), extentMM: c.ExtentMM, zero: a.TimeZeroSample + s.TimeShiftSamples}
+	w := &traceView{a: a, corrector: NewCorrector(a, s, c, v.Delays), farMM: FarMM(a, c.ExtentMM), zero: a.TimeZeroSample + s.TimeShiftSamples}
 	w.plan, _ = fft.NewPlan[complex128](fft.FastLength(a.Samples)) // FastLength is always a valid length
 	w.trace, w.data = make([]complex64, a.Samples), make([]complex128, w.plan.Len()*len(v.Delays))
 	w.scratch = make([]complex128, len(w.data))
@@ -223,7 +223,7 @@ func (w *traceView) storeBeyond(v *Survey, i, d int) {
 	if w.quiet != nil {
 		energy = 3.0 / 8 * float64(len(w.quiet)) // mean of sin⁴
 	}
-	first := int(math.Ceil(FarMM(w.a, w.extentMM) / v.StepMM[i]))
+	first := int(math.Ceil(w.farMM / v.StepMM[i]))
 	outside := 0.0
 	for x := first; x <= n-first; x++ {
 		value := w.data[x*lanes+d]

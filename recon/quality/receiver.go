@@ -150,8 +150,11 @@ func (s *Subject) findMirror() mirror {
 func (s *Subject) mirrorEquations() (*mat.SymDense, *mat.VecDense, float64) {
 	normal, right := mat.NewSymDense(4, nil), mat.NewVecDense(4, nil)
 	rss, count := 0.0, 0.0
-	for _, i := range s.sound() {
-		sin, cos := math.Sincos(2 * s.V.PhaseRad[i])
+	sound := s.sound()
+	// The phase is taken from its drift: what it scatters beside that is noise, which must not pass for knowledge.
+	middle, drift, _, _ := overOrder(pick(s.order, sound), pick(s.unwrapped(), sound))
+	for _, i := range sound {
+		sin, cos := math.Sincos(2 * (middle + drift*(s.order[i]-0.5)))
 		n := len(s.profile[i])
 		for x, p := range s.profile[i] {
 			mirrored, y := s.profile[i][n-1-x], s.off[i][x]
@@ -180,7 +183,7 @@ func (s *Subject) noiseBalance() balance {
 	if n < 2000 {
 		return balance{gainSE: 1, skewSE: 1}
 	}
-	si, sq := spread(s.residue.i), spread(s.residue.q)
+	si, sq := s.residue.sdI, s.residue.sdQ
 	// Cut at four SD, so that spikes do not count.
 	var cross, pi, pq float64
 	for k, x := range s.residue.i {

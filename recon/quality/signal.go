@@ -114,6 +114,8 @@ const noisyAbove = 3e-4
 type residue struct {
 	i, q  []float64 // channels, of the same samples
 	shots []int     // place of the shot that each came from
+
+	sdI, sdQ float64 // spread of the channels
 }
 
 const (
@@ -141,7 +143,8 @@ func (s *Subject) makeResidue() residue {
 		}
 	}
 	// Where much more is left than noise, it is the object, which the trace is too short to filter out.
-	if len(r.i) > 0 && math.Hypot(spread(r.i), spread(r.q)) > 1.1*math.Sqrt(2*outside) {
+	r.sdI, r.sdQ = spread(r.i), spread(r.q)
+	if len(r.i) > 0 && math.Hypot(r.sdI, r.sdQ) > 1.1*math.Sqrt(2*outside) {
 		return residue{}
 	}
 	return r
@@ -210,18 +213,16 @@ func (s *Subject) whiteness() Finding {
 }
 
 func (s *Subject) gaussianity() Finding {
-	k := kurtosis(s.residue.i)
-	if other := kurtosis(s.residue.q); math.Abs(other) > math.Abs(k) {
+	k := kurtosis(s.residue.i, s.residue.sdI)
+	if other := kurtosis(s.residue.q, s.residue.sdQ); math.Abs(other) > math.Abs(k) {
 		k = other
 	}
 	se := math.Sqrt(24 / float64(len(s.residue.i)))
 	return doubtIf(math.Abs(k) > 0.3 && math.Abs(k) > manySpreads*se, k, "", "excess kurtosis of the noise %.2f", k)
 }
 
-// kurtosis returns the excess kurtosis, 0 for Gaussian values, without the one in a thousand values that are largest:
-// those are for spikes. Cutting takes 0.1 off.
-func kurtosis(values []float64) float64 {
-	sd := spread(values)
+// kurtosis returns the excess kurtosis of the values within 5 SD, 0 for Gaussian ones; what lies beyond is for spikes.
+func kurtosis(values []float64, sd float64) float64 {
 	var m2, m4, n float64
 	for _, v := range values {
 		if v *= 1 / sd; math.Abs(v) < 5 {
@@ -234,8 +235,8 @@ func kurtosis(values []float64) float64 {
 func (s *Subject) spikes() Finding {
 	worst, count := 0.0, 0
 	at := map[int]bool{}
-	for _, channel := range [][]float64{s.residue.i, s.residue.q} {
-		sd := spread(channel)
+	for c, channel := range [][]float64{s.residue.i, s.residue.q} {
+		sd := [2]float64{s.residue.sdI, s.residue.sdQ}[c]
 		for k, v := range channel {
 			z := math.Abs(v) / sd
 			worst = math.Max(worst, z)
