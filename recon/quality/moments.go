@@ -200,7 +200,7 @@ func (s *Subject) mmPerKHz() float64 { return 1 / (acquisition.GammaMHzPerMT * m
 
 func frequencyOffset(s *Subject) []Finding {
 	p := s.place()
-	limit := p.middleBlur * s.resolutionMM() / 20 / s.mmPerKHz()
+	limit := math.Max(1, p.middleBlur/2) * s.resolutionMM() / 20 / s.mmPerKHz()
 	if !(manySpreads*p.middleSE < 20*limit && p.middleBlur < 20) {
 		return []Finding{found(Fine, 0, "kHz", "the directions do not tell a frequency offset from the object's place")}
 	}
@@ -211,7 +211,7 @@ func frequencyOffset(s *Subject) []Finding {
 
 func frequencyDrift(s *Subject) []Finding {
 	p := s.place()
-	limit := p.driftBlur * s.resolutionMM() / 20 / s.mmPerKHz()
+	limit := math.Max(1, p.driftBlur/2) * s.resolutionMM() / 20 / s.mmPerKHz()
 	if !(manySpreads*p.driftSE < 20*limit && p.driftBlur < 20) {
 		return []Finding{found(Fine, 0, "kHz", "without zero-gradient shots, this order of directions does not tell a drift from the object's place")}
 	}
