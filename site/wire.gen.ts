@@ -41,6 +41,11 @@ export interface DeriveRequest {
   recipe: Recipe;
 }
 
+export interface ExamineRequest {
+  recipe: Recipe;
+  rates: Summary | null;
+}
+
 export interface ExportRequest {
   recipe: Recipe;
   quantity: string;
@@ -66,6 +71,19 @@ export interface Fault {
   kind: string;
   where: string;
   text: string;
+}
+
+export interface Finding {
+  level: string;
+  check: string;
+  text: string;
+  value: number;
+  unit: string;
+  rule: string;
+  source: string;
+  advice: string;
+  shots: number[];
+  delays: number[];
 }
 
 export interface FitRequest {
@@ -224,6 +242,7 @@ export interface Recipe {
   singlePoint: SinglePoint;
   rates: Rates;
   calibration?: Calibration;
+  sample: Sample;
   mask: Mask;
 }
 
@@ -254,6 +273,22 @@ export interface Reconstruction {
   iterations: number;
 }
 
+export interface Report {
+  findings: Finding[];
+  proposed: Settings;
+  shots: number[];
+  series: Series[];
+  delayUS: number[];
+  curve: number[];
+}
+
+export interface Sample {
+  temperatureC?: number;
+  referenceUM?: number;
+  referenceSEUM?: number;
+  referenceAmplitude?: number;
+}
+
 export interface SampleTime {
   sample: number;
   timeUS: number;
@@ -261,6 +296,13 @@ export interface SampleTime {
   kMaxPerMM: number;
   fieldOfViewMM: number;
   resolutionMM: number;
+}
+
+export interface Series {
+  name: string;
+  label: string;
+  unit: string;
+  values: number[];
 }
 
 export interface Setting {
@@ -317,7 +359,9 @@ export interface Summary {
   median: number;
   quartiles: [number, number];
   range: [number, number];
+  central90: [number, number];
   medianSE: number;
+  medianCalibrationSE: number;
   fractions: Fraction[];
   edges: number[];
   counts: number[];
@@ -350,5 +394,6 @@ export interface Requests {
   reconstruct: { body: ReconstructRequest; reply: Reconstructed };
   fit: { body: FitRequest; reply: Fitted };
   derive: { body: DeriveRequest; reply: Numbers };
+  examine: { body: ExamineRequest; reply: Report };
   export: { body: ExportRequest; reply: Exported };
 }

@@ -141,6 +141,9 @@ func (r Recipe) Check() error {
 			return fault.Within("recipe", err)
 		}
 	}
+	if err := r.Sample.Check(); err != nil {
+		return fault.Within("recipe", err)
+	}
 	if r.Rates.MaxPerUS != 0 && r.Rates.MaxPerUS <= r.Rates.MinPerUS {
 		return fault.New(fault.BadSetting, "recipe rates.maxPerUS", "%g is not above the slowest rate %g", r.Rates.MaxPerUS, r.Rates.MinPerUS)
 	}

@@ -26,6 +26,7 @@ type Recipe struct {
 	SinglePoint    SinglePoint         `json:"singlePoint"`
 	Rates          Rates               `json:"rates"`
 	Calibration    *oxygen.Calibration `json:"calibration,omitempty"`
+	Sample         oxygen.Sample       `json:"sample"`
 	Mask           Mask                `json:"mask"`
 }
 

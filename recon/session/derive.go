@@ -7,6 +7,7 @@ import (
 	"sort"
 
 	"torrloom/recon/fault"
+	"torrloom/recon/oxygen"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
 )
@@ -39,9 +40,19 @@ var fateOfStatus = map[relax.Status]Fate{
 
 // Derived is the result of the last stage: the fate of every voxel, pO2 and its standard error from noise, and numbers.
 type Derived struct {
-	Fate       []uint8
-	PO2, PO2SE []float32 // empty without a calibration
-	Numbers    Numbers
+	Fate             []uint8
+	PO2              []float32 // empty without a calibration, as the two below
+	PO2SE            []float32 // random: from the noise of the measurement
+	PO2CalibrationSE []float32 // systematic: from the calibration; moves all voxels together
+	Numbers          Numbers
+}
+
+// Fitted are the maps that the last stage starts from. Amplitude and AmplitudeSE may be nil unless the recipe corrects for
+// the probe concentration.
+type Fitted struct {
+	Reference []float32 // image of the reference frame
+	oxygen.Rates
+	Status []uint8
 }
 
 // Numbers describes a derived map.
@@ -64,20 +75,24 @@ type FateCount struct {
 // Derive masks the fitted voxels by the reference-delay image and turns rates into pO2.
 //
 // Errors: bug when the arrays differ in length.
-func Derive(r recipe.Recipe, reference, rate, rateSE []float32, status []uint8) (*Derived, error) {
-	n := len(reference)
-	if len(rate) != n || len(rateSE) != n || len(status) != n {
-		return nil, fault.New(fault.Bug, "derive", "arrays of %d, %d, %d and %d voxels", n, len(rate), len(rateSE), len(status))
+func Derive(r recipe.Recipe, f Fitted) (*Derived, error) {
+	n := len(f.Reference)
+	if len(f.Rate) != n || len(f.RateSE) != n || len(f.Status) != n {
+		return nil, fault.New(fault.Bug, "derive", "arrays of %d, %d, %d and %d voxels", n, len(f.Rate), len(f.RateSE), len(f.Status))
 	}
 	d := &Derived{Fate: make([]uint8, n)}
-	d.Numbers.MaskLevel = r.Mask.AmplitudeFraction * strongest(reference)
+	d.Numbers.MaskLevel = r.Mask.AmplitudeFraction * strongest(f.Reference)
 	if r.Calibration != nil {
-		d.PO2, d.PO2SE = make([]float32, n), make([]float32, n)
+		maps, err := oxygen.MapValues(f.Rates, *r.Calibration, r.Sample)
+		if err != nil {
+			return nil, fault.Within("recipe", err)
+		}
+		d.PO2, d.PO2SE, d.PO2CalibrationSE = maps.PO2, maps.RandomSE, maps.CalibrationSE
 	}
-	for i := range reference {
-		d.decide(i, r, float64(reference[i]), rate, rateSE, relax.Status(status[i]))
+	for i, amplitude := range f.Reference {
+		d.decide(i, float64(amplitude), relax.Status(f.Status[i]))
 	}
-	d.count(r, rate, rateSE)
+	d.count(r, f.Rate, f.RateSE)
 	return d, nil
 }
 
@@ -97,21 +112,19 @@ func strongest(reference []float32) float64 {
 	return math.Max(0, inside[len(inside)-1-len(inside)/1000])
 }
 
-func (d *Derived) decide(i int, r recipe.Recipe, amplitude float64, rate, rateSE []float32, status relax.Status) {
+// decide settles the fate of a voxel and takes pO2 from one that is not in the map.
+func (d *Derived) decide(i int, amplitude float64, status relax.Status) {
 	fate := fateOfStatus[status]
 	if fate != OutsideView && !(amplitude >= d.Numbers.MaskLevel) {
 		fate = BelowMask
 	}
-	pO2, se := math.NaN(), math.NaN()
-	if r.Calibration != nil && fate == Answered {
-		pO2, se = r.Calibration.PO2(float64(rate[i]), float64(rateSE[i]))
-		if pO2 < 0 {
-			fate = Negative
-		}
+	if d.PO2 != nil && fate == Answered && d.PO2[i] < 0 {
+		fate = Negative
 	}
 	d.Fate[i] = uint8(fate)
-	if d.PO2 != nil {
-		d.PO2[i], d.PO2SE[i] = float32(pO2), float32(se)
+	if d.PO2 != nil && fate != Answered && fate != Negative {
+		nan := float32(math.NaN())
+		d.PO2[i], d.PO2SE[i], d.PO2CalibrationSE[i] = nan, nan, nan
 	}
 }
 
@@ -127,13 +140,33 @@ func (d *Derived) count(r recipe.Recipe, rate, rateSE []float32) {
 	d.Numbers.Rate = summarise("1/µs", d.Fate, rate, rateSE, nil)
 	if r.Calibration != nil {
 		s := summarise("torr", d.Fate, d.PO2, d.PO2SE, thresholdsTorr)
+		s.MedianCalibrationSE = d.medianOf(d.PO2CalibrationSE)
 		d.Numbers.PO2 = &s
+		below, above := r.Calibration.OutsideRange(d.PO2)
+		if text := r.Calibration.RangeWarning(below, above, s.Count); text != "" {
+			d.Numbers.Warnings = append(d.Numbers.Warnings, text)
+		}
 	}
 	if answered := counts[Answered] + counts[Negative]; answered == 0 {
 		d.Numbers.Warnings = append(d.Numbers.Warnings, "no voxel has an answer; lower the mask level or look at the amplitude image")
 	} else if share := float64(counts[Negative]) / float64(answered); share > 0.01 {
 		d.Numbers.Warnings = append(d.Numbers.Warnings, fmt.Sprintf("%.1f %% of the answered voxels have a pO2 below zero; noise does that near zero, a wrong rate at zero oxygen does it everywhere", 100*share))
 	}
+}
+
+// medianOf returns the median of the answered voxels, 0 when there are none.
+func (d *Derived) medianOf(values []float32) float64 {
+	var v []float64
+	for i, f := range d.Fate {
+		if Fate(f) == Answered || Fate(f) == Negative {
+			v = append(v, float64(values[i]))
+		}
+	}
+	if len(v) == 0 {
+		return 0
+	}
+	slices.Sort(v)
+	return quantile(v, 0.5)
 }
 
 // thresholdsTorr are the pO2 below which tissue is commonly called hypoxic.
@@ -149,12 +182,15 @@ type Summary struct {
 	Median    float64    `json:"median"`
 	Quartiles [2]float64 `json:"quartiles"`
 	Range     [2]float64 `json:"range"`
-	MedianSE  float64    `json:"medianSE"`  // median of the voxels' standard errors
-	Fractions []Fraction `json:"fractions"` // pO2 only
-	Edges     []float64  `json:"edges"`     // of the histogram's bins
-	Counts    []int      `json:"counts"`
-	Below     int        `json:"below"` // voxels left of the first edge
-	Above     int        `json:"above"` // voxels right of the last
+	Central90 [2]float64 `json:"central90"` // 5 % of the voxels lie below the one and above the other
+	MedianSE  float64    `json:"medianSE"`  // median of the voxels' random standard errors
+	// MedianCalibrationSE is that of the systematic errors; 0 where the calibration states none.
+	MedianCalibrationSE float64    `json:"medianCalibrationSE"`
+	Fractions           []Fraction `json:"fractions"` // pO2 only
+	Edges               []float64  `json:"edges"`     // of the histogram's bins
+	Counts              []int      `json:"counts"`
+	Below               int        `json:"below"` // voxels left of the first edge
+	Above               int        `json:"above"` // voxels right of the last
 }
 
 // Fraction is the share of answered voxels at or below a threshold. Negative values count.
@@ -179,6 +215,7 @@ func summarise(unit string, fates []uint8, values, errors []float32, thresholds 
 	s.Mean, s.SD = meanAndSD(v)
 	s.Median, s.Quartiles = quantile(v, 0.5), [2]float64{quantile(v, 0.25), quantile(v, 0.75)}
 	s.Range = [2]float64{v[0], v[len(v)-1]}
+	s.Central90 = [2]float64{quantile(v, 0.05), quantile(v, 0.95)}
 	s.MedianSE = quantile(se, 0.5)
 	for _, t := range thresholds {
 		at := sort.Search(len(v), func(i int) bool { return v[i] > t })

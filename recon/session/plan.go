@@ -142,7 +142,7 @@ func keysOf(dataHash string, r recipe.Recipe) Keys {
 	}
 	k.Reconstruct = hash(k.Measure, r.Reconstruction)
 	k.Fit = hash(k.Reconstruct, r.Rates)
-	k.Derive = hash(k.Fit, r.Mask, r.Calibration)
+	k.Derive = hash(k.Fit, r.Mask, r.Calibration, r.Sample)
 	return k
 }
 

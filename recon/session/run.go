@@ -7,6 +7,8 @@ import (
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
+	"torrloom/recon/oxygen"
+	"torrloom/recon/quality"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
 	"torrloom/recon/volume"
@@ -22,6 +24,7 @@ type Result struct {
 	NoiseSD   []float64   // [frame]
 	Maps      *relax.Maps
 	Derived   *Derived
+	Report    *quality.Report
 	Warnings  []string
 	Seconds   map[string]float64 // wall time per stage
 }
@@ -37,7 +40,7 @@ func Run(a *acquisition.Acquisition, dataHash string, recipeText []byte, workers
 		do   func() error
 	}{
 		{"measure", func() error { return r.measure(dataHash, recipeText) }},
-		{"reconstruct", r.reconstruct}, {"fit", r.fit}, {"derive", r.derive},
+		{"reconstruct", r.reconstruct}, {"fit", r.fit}, {"derive", r.derive}, {"examine", r.examine},
 	}
 	for _, step := range steps {
 		start := time.Now()
@@ -124,11 +127,17 @@ func (r *runner) fit() error {
 
 func (r *runner) derive() (err error) {
 	m := r.out.Maps
-	r.out.Derived, err = Derive(r.recipe, r.out.Images[r.out.Plan.Frames.Reference], m.Rate, m.RateSE, m.Status)
+	rates := oxygen.Rates{Rate: m.Rate, RateSE: m.RateSE, Amplitude: m.Amplitude, AmplitudeSE: m.AmplitudeSE}
+	r.out.Derived, err = Derive(r.recipe, Fitted{Reference: r.out.Images[r.out.Plan.Frames.Reference], Rates: rates, Status: m.Status})
 	if err == nil {
 		r.out.Warnings = append(r.out.Warnings, r.out.Derived.Numbers.Warnings...)
 	}
 	return err
+}
+
+func (r *runner) examine() error {
+	r.out.Report = Examine(r.a, r.recipe, &r.out.Derived.Numbers.Rate)
+	return nil
 }
 
 // beside runs n jobs in goroutines and returns the first error. A panic of a job becomes a bug fault.

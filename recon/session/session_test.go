@@ -10,6 +10,7 @@ import (
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
+	"torrloom/recon/oxygen"
 	"torrloom/recon/phantom"
 	"torrloom/recon/recipe"
 )
@@ -96,7 +97,11 @@ func TestASettingChangesTheKeysFromItsStageOn(t *testing.T) {
 			continue
 		}
 		group, leaf, _ := strings.Cut(s.Path, ".")
-		changed := planOf(t, a, "data", `{"`+group+`":{"`+leaf+`":`+value+`}}`)
+		text := `{"` + group + `":{"` + leaf + `":` + value + `}}`
+		if strings.HasPrefix(leaf, "reference") { // a reference is a concentration and an amplitude
+			text = `{"sample":{"referenceUM":10,"referenceAmplitude":1,"` + leaf + `":` + value + `}}`
+		}
+		changed := planOf(t, a, "data", text)
 		before, after := reflect.ValueOf(base.Keys), reflect.ValueOf(changed.Keys)
 		reached := false
 		for i, stage := range stages {
@@ -209,7 +214,7 @@ func TestDeriveDecidesTheFateOfEachVoxel(t *testing.T) {
 	rate := []float32{nan, 0.3, 0.29, 0.15, nan, nan, nan, nan, 0.25}
 	se := []float32{nan, 0.01, 0.01, 0.01, nan, nan, nan, nan, 0.02}
 	status := []uint8{0, 1, 1, 1, 2, 3, 4, 5, 1}
-	d, err := Derive(r, reference, rate, se, status)
+	d, err := Derive(r, Fitted{Reference: reference, Rates: oxygen.Rates{Rate: rate, RateSE: se}, Status: status})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -16,6 +16,7 @@ import (
 	"torrloom/recon/exporter"
 	"torrloom/recon/fault"
 	"torrloom/recon/importer"
+	"torrloom/recon/oxygen"
 	"torrloom/recon/phantom"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
@@ -58,6 +59,7 @@ var handlers = map[string]handler{
 	"reconstruct": handleReconstruct,
 	"fit":         handleFit,
 	"derive":      handleDerive,
+	"examine":     handleExamine,
 	"export":      handleExport,
 }
 
@@ -233,7 +235,7 @@ func handleFit(e *Engine, body []byte, buffers [][]byte, progress func(Progress)
 	if err != nil {
 		return nil, nil, err
 	}
-	out := [][]byte{bytesOf(m.Rate), bytesOf(m.RateSE), bytesOf(m.Amplitude), bytesOf(m.ChiSquare), m.Status}
+	out := [][]byte{bytesOf(m.Rate), bytesOf(m.RateSE), bytesOf(m.Amplitude), bytesOf(m.ChiSquare), m.Status, bytesOf(m.AmplitudeSE)}
 	return Fitted{Seconds: time.Since(start).Seconds()}, out, nil
 }
 
@@ -242,20 +244,35 @@ func handleDerive(e *Engine, body []byte, buffers [][]byte, _ func(Progress)) (a
 	if err != nil {
 		return nil, nil, err
 	}
-	if len(buffers) != 4 {
-		return nil, nil, fault.New(fault.Bug, "derive", "%d buffers; 4 are needed", len(buffers))
+	if len(buffers) != 4 && len(buffers) != 6 {
+		return nil, nil, fault.New(fault.Bug, "derive", "%d buffers; 4 or 6 are needed", len(buffers))
 	}
-	d, err := session.Derive(q.Recipe, floatsOf(buffers[0]), floatsOf(buffers[1]), floatsOf(buffers[2]), buffers[3])
+	f := session.Fitted{Reference: floatsOf(buffers[0]), Rates: oxygen.Rates{Rate: floatsOf(buffers[1]), RateSE: floatsOf(buffers[2])}, Status: buffers[3]}
+	if len(buffers) == 6 {
+		f.Amplitude, f.AmplitudeSE = floatsOf(buffers[4]), floatsOf(buffers[5])
+	}
+	d, err := session.Derive(q.Recipe, f)
 	if err != nil {
 		return nil, nil, err
 	}
-	return d.Numbers, [][]byte{d.Fate, bytesOf(d.PO2), bytesOf(d.PO2SE)}, nil
+	return d.Numbers, [][]byte{d.Fate, bytesOf(d.PO2), bytesOf(d.PO2SE), bytesOf(d.PO2CalibrationSE)}, nil
+}
+
+func handleExamine(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, [][]byte, error) {
+	q, err := decode[ExamineRequest](body)
+	if err != nil {
+		return nil, nil, err
+	}
+	return *session.Examine(e.open.a, q.Recipe, q.Rates), nil, nil
 }
 
 func handleExport(e *Engine, body []byte, buffers [][]byte, _ func(Progress)) (any, [][]byte, error) {
 	q, err := decode[ExportRequest](body)
 	if err != nil {
 		return nil, nil, err
+	}
+	if len(buffers) != 1 {
+		return nil, nil, fault.New(fault.Bug, "export", "%d buffers; one map is needed", len(buffers))
 	}
 	a, r := e.open.a, q.Recipe.Reconstruction
 	g, err := volume.Cube(a.Dim, r.Matrix, r.FieldOfViewMM)

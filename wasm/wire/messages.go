@@ -12,6 +12,7 @@ import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
 	"torrloom/recon/leastsquares"
+	"torrloom/recon/quality"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
 	"torrloom/recon/singlepoint"
@@ -143,7 +144,8 @@ type Reconstructed struct {
 }
 
 // FitRequest asks for the rates of voxels. The buffer is float32 [frame][voxel] over the job's voxels, all frames.
-// The reply has the buffers rate, rateSE, amplitude, chiSquare (float32) and status (uint8), each over those voxels.
+// The reply has the buffers rate, rateSE, amplitude, chiSquare (float32), status (uint8) and amplitudeSE
+// (float32), each over those voxels.
 type FitRequest struct {
 	Recipe  recipe.Recipe `json:"recipe"`
 	NoiseSD []float64     `json:"noiseSD"`
@@ -156,7 +158,8 @@ type Fitted struct {
 }
 
 // DeriveRequest asks for mask, pO2 and numbers. Buffers: the image of the reference frame, rate, rateSE (float32), status
-// (uint8), over all voxels. The reply has the buffers fate (uint8, see session.Fates), pO2 and pO2SE (float32; empty without a
+// (uint8) and, when the recipe corrects for the probe concentration, amplitude and amplitudeSE (float32), over all voxels.
+// The reply has the buffers fate (uint8, see session.Fates), pO2, pO2SE and pO2CalibrationSE (float32; empty without a
 // calibration).
 type DeriveRequest struct {
 	Recipe recipe.Recipe `json:"recipe"`
@@ -164,6 +167,16 @@ type DeriveRequest struct {
 
 // Derived answers DeriveRequest.
 type Derived = session.Numbers
+
+// ExamineRequest asks what is to be said of the acquisition as the recipe conditions it. Rates, which may be missing, sums
+// up the fitted rates.
+type ExamineRequest struct {
+	Recipe recipe.Recipe    `json:"recipe"`
+	Rates  *session.Summary `json:"rates"`
+}
+
+// Examined answers ExamineRequest: findings, proposed conditioning, and numbers per shot.
+type Examined = quality.Report
 
 // ExportRequest asks for one map as a file. The buffer holds its values; the reply has one buffer, the file's bytes.
 type ExportRequest struct {

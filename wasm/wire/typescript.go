@@ -23,6 +23,7 @@ var Exchanges = []Exchange{
 	{"reconstruct", ReconstructRequest{}, Reconstructed{}},
 	{"fit", FitRequest{}, Fitted{}},
 	{"derive", DeriveRequest{}, Derived{}},
+	{"examine", ExamineRequest{}, Examined{}},
 	{"export", ExportRequest{}, Exported{}},
 }
 

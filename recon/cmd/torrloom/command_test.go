@@ -71,13 +71,13 @@ func TestRunWritesMapsAndRecord(t *testing.T) {
 	if code != exitDone || stderr != "" || !strings.Contains(stdout, "median pO2") {
 		t.Fatalf("code %d, output %q, errors %q", code, stdout, stderr)
 	}
-	for _, name := range []string{"po2.nii.gz", "rate.nii.gz", "amplitude.nii.gz", "mask.nii.gz", "run.json"} {
+	for _, name := range []string{"po2.nii.gz", "po2-se.nii.gz", "rate.nii.gz", "amplitude.nii.gz", "mask.nii.gz", "run.json"} {
 		if !exists(filepath.Join(out, "disc", name)) {
 			t.Errorf("%s is missing", name)
 		}
 	}
 	r := readRecord(t, filepath.Join(out, "disc"))
-	if len(r.Inputs) != 1 || len(r.Inputs[0].SHA256) != 64 || r.Recipe.Reconstruction.Method != "back-projection" || r.Counts["in the map"] == 0 || len(r.Timings) != 4 || !r.MadeUp {
+	if len(r.Inputs) != 1 || len(r.Inputs[0].SHA256) != 64 || r.Recipe.Reconstruction.Method != "back-projection" || r.Counts["in the map"] == 0 || len(r.Timings) != 5 || len(r.Findings) < 20 || !r.MadeUp {
 		t.Errorf("record %+v", r)
 	}
 	if left, _ := filepath.Glob(filepath.Join(out, ".torrloom-*")); len(left) != 0 {
@@ -182,4 +182,46 @@ func TestDemoFileOpensAgain(t *testing.T) {
 	if r := readRecord(t, filepath.Join(out, "demo")); !r.MadeUp || r.PO2 == nil || r.PO2.Count < 20000 {
 		t.Errorf("record of the demo: made up %v, %+v", r.MadeUp, r.PO2)
 	}
+}
+
+func TestCheckSaysWhatIsWrongAndStops(t *testing.T) {
+	folder := t.TempDir()
+	good := writeDisc(t, folder, true)
+	code, stdout, stderr := run("check", good)
+	if code != exitDone || stderr != "" || !strings.Contains(stdout, "disc.npz: ") || !strings.Contains(stdout, "signal-to-noise") {
+		t.Errorf("clean file: code %d, output %q, errors %q", code, stdout, stderr)
+	}
+	bad := filepath.Join(folder, "bad.npz")
+	writeNoise(t, bad)
+	code, stdout, _ = run("check", "-json", good, bad)
+	lines := strings.Split(strings.TrimSpace(stdout), "\n")
+	if code != exitStop || len(lines) != 2 {
+		t.Fatalf("noise: code %d, %d lines", code, len(lines))
+	}
+	var said struct {
+		Findings []struct{ Level, Check, Advice string }
+	}
+	if err := json.Unmarshal([]byte(lines[1]), &said); err != nil {
+		t.Fatal(err)
+	}
+	if said.Findings[0].Level != "stop" || said.Findings[0].Advice == "" {
+		t.Errorf("the first finding is %+v", said.Findings[0])
+	}
+}
+
+// writeNoise writes an acquisition of nothing but noise.
+func writeNoise(t *testing.T, path string) {
+	t.Helper()
+	a, err := phantom.DemoAcquisition(true)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for s := range a.Shots {
+		phantom.Silence(a, s, 10, uint64(s))
+	}
+	var file bytes.Buffer
+	if err := exporter.Acquisition(&file, a); err != nil {
+		t.Fatal(err)
+	}
+	write(t, path, file.Bytes())
 }

@@ -1,8 +1,9 @@
 // Command torrloom runs the chain natively: the same engine as the page, the same numbers.
 //
 //	torrloom run [-recipe R.json] [-out DIR] [-workers N] FILE...
+//	torrloom check [-recipe R.json] [-json] FILE...
 //
-// Exit codes: 0 done, 2 usage, 3 input refused, 4 nothing could be computed. Faults go to standard error as
+// Exit codes: 0 done, 2 usage, 3 input refused, 4 nothing could be computed, 5 a finding says stop. Faults go to standard error as
 // "where: text", one line each.
 package main
 
@@ -20,6 +21,7 @@ const (
 	exitUsage   = 2
 	exitRefused = 3
 	exitNothing = 4
+	exitStop    = 5
 )
 
 // verb is one word of the command line.
@@ -31,6 +33,7 @@ type verb struct {
 func verbs() []verb {
 	return []verb{
 		{"run", "run [-recipe R.json] [-out DIR] [-workers N] FILE...", "reconstruct, fit and convert to pO2; writes maps and run.json into DIR/<file stem>/", runFiles},
+		{"check", "check [-recipe R.json] [-json] FILE...", "say what is right and wrong with an acquisition; exit code 5 when it must not be used as it is", checkFiles},
 		{"demo", "demo [-noise=false] FILE.npz", "write the invented demo acquisition by the field dictionary", writeDemo},
 	}
 }

@@ -17,6 +17,7 @@ import (
 	"torrloom/recon/exporter"
 	"torrloom/recon/fault"
 	"torrloom/recon/importer"
+	"torrloom/recon/quality"
 	"torrloom/recon/recipe"
 	"torrloom/recon/session"
 )
@@ -62,17 +63,25 @@ func readRecipe(path string) ([]byte, error) {
 	return text, nil
 }
 
-func runFile(path string, recipeText []byte, out string, workers int, stdout io.Writer) error {
+// load reads and opens one file, and returns its acquisition, its record and what is to be said of it.
+func load(path string) (*acquisition.Acquisition, inputRecord, []string, error) {
 	data, err := os.ReadFile(path)
 	if err != nil {
-		return fault.New(fault.BadFile, path, "cannot be read: %v", err)
+		return nil, inputRecord{}, nil, fault.New(fault.BadFile, path, "cannot be read: %v", err)
 	}
 	a, warnings, err := importer.Open(filepath.Base(path), data)
 	if err != nil {
-		return err
+		return nil, inputRecord{}, nil, err
 	}
 	sum := sha256.Sum256(data)
-	input := inputRecord{Name: filepath.Base(path), Bytes: int64(len(data)), SHA256: hex.EncodeToString(sum[:])}
+	return a, inputRecord{Name: filepath.Base(path), Bytes: int64(len(data)), SHA256: hex.EncodeToString(sum[:])}, warnings, nil
+}
+
+func runFile(path string, recipeText []byte, out string, workers int, stdout io.Writer) error {
+	a, input, warnings, err := load(path)
+	if err != nil {
+		return err
+	}
 	result, err := session.Run(a, input.SHA256, recipeText, max(1, workers))
 	if err != nil {
 		return fault.Within(input.Name, err)
@@ -109,6 +118,7 @@ type record struct {
 	Counts   map[string]int     `json:"counts"`
 	Rate     session.Summary    `json:"rate"`
 	PO2      *session.Summary   `json:"pO2"`
+	Findings []quality.Finding  `json:"findings"`
 	Timings  map[string]float64 `json:"timingsSeconds"`
 	Warnings []string           `json:"warnings"`
 	Caution  string             `json:"caution"`
@@ -146,7 +156,7 @@ func newRecord(a *acquisition.Acquisition, input inputRecord, warnings []string,
 		Program: "torrloom", Version: version, Inputs: []inputRecord{input}, MadeUp: a.MadeUp, Recipe: r.Plan.Recipe,
 		Image: imageRecord{N: r.Grid.N, VoxelMM: r.Grid.VoxelMM, ReferenceUS: r.Plan.Frames.TimeUS[r.Plan.Frames.Reference], FrameKind: r.Plan.Frames.Kind, FrameUS: r.Plan.Frames.TimeUS, MaskLevel: r.Derived.Numbers.MaskLevel,
 			RateName: r.Plan.Frames.RateName, NoiseSD: r.NoiseSD, ExtentMM: r.Facts.ExtentMM},
-		Counts: counts, Rate: r.Derived.Numbers.Rate, PO2: r.Derived.Numbers.PO2, Timings: r.Seconds, Warnings: warnings, Caution: caution,
+		Counts: counts, Rate: r.Derived.Numbers.Rate, PO2: r.Derived.Numbers.PO2, Findings: r.Report.Findings, Timings: r.Seconds, Warnings: warnings, Caution: caution,
 	}
 }
 
@@ -168,6 +178,10 @@ func writeAll(folder string, r *session.Result, rec record) error {
 	}
 	if r.Derived.PO2 != nil {
 		parts["po2.nii.gz"] = nifti("pO2", r, r.Derived.PO2)
+		parts["po2-se.nii.gz"] = nifti("pO2 random SE", r, r.Derived.PO2SE)
+		if r.Plan.Recipe.Calibration.HasErrors() {
+			parts["po2-calibration-se.nii.gz"] = nifti("pO2 calibration SE", r, r.Derived.PO2CalibrationSE)
+		}
 	}
 	if err := os.MkdirAll(filepath.Dir(folder), 0o755); err != nil {
 		return err
@@ -189,15 +203,17 @@ func writeAll(folder string, r *session.Result, rec record) error {
 	return moveParts(fresh, folder, parts)
 }
 
-// moveParts puts the finished files in place and removes a pO2 map of an earlier run that this one did not make. Other
-// files in the folder are left alone.
+// moveParts puts the finished files in place and removes pO2 maps of an earlier run that this one did not make. Other files
+// in the folder are left alone.
 func moveParts(fresh, folder string, parts map[string]func(io.Writer) error) error {
 	if err := os.MkdirAll(folder, 0o755); err != nil {
 		return err
 	}
-	if parts["po2.nii.gz"] == nil {
-		if err := os.Remove(filepath.Join(folder, "po2.nii.gz")); err != nil && !os.IsNotExist(err) {
-			return err
+	for _, name := range []string{"po2.nii.gz", "po2-se.nii.gz", "po2-calibration-se.nii.gz"} {
+		if parts[name] == nil {
+			if err := os.Remove(filepath.Join(folder, name)); err != nil && !os.IsNotExist(err) {
+				return err
+			}
 		}
 	}
 	for name := range parts {
@@ -225,6 +241,7 @@ func say(w io.Writer, folder string, r *session.Result, rec record) {
 		fmt.Fprintf(w, ", median pO2 %.3g torr", rec.PO2.Median)
 	}
 	fmt.Fprintln(w)
+	sayFindings(w, r.Report.Findings, quality.Fine)
 	for _, warning := range rec.Warnings {
 		fmt.Fprintln(w, "  note:", warning)
 	}
