@@ -72,6 +72,20 @@ func (p *problem) bytesPerDelay() int64 {
 	return int64(p.perDelay) * perColumn
 }
 
+// Bytes returns about the memory that Images needs beside the spokes, for spokes of a band and so many noise
+// realisations.
+func Bytes(g volume.Grid, bandMM float64, delays, realisations int) int64 {
+	n, _ := boxOf(g, bandMM)
+	voxels, wide := int64(1), int64(1)
+	for axis := range g.Dim() {
+		voxels, wide = voxels*int64(n[axis]), wide*int64(2*n[axis])
+	}
+	perColumn := 4*wide/2 + 4*voxels + 5*4*voxels // as bytesPerDelay, of a full box
+	atOnce := min(int64(delays)*int64(1+realisations)*perColumn, max(groupBytes, 2*int64(1+realisations)*perColumn))
+	setUp := 8 * int64(float64(voxels)*math.Pow(accuracy.Oversampling, float64(g.Dim()))) // the grid that makes the operator
+	return max(atOnce, setUp) + 4*wide + 4*int64(g.Voxels())*int64(delays)
+}
+
 // run makes the images of delays from..to-1.
 func (p *problem) run(out *Result, voxels int, s Settings, from, to int, progress func(float64)) error {
 	right, energy, err := p.gridded(from, to, func(done float64) { progress(0.1 * done) })
@@ -96,9 +110,8 @@ func (p *problem) run(out *Result, voxels int, s Settings, from, to int, progres
 		if i == 0 {
 			note()
 		}
-		cg.step()
+		cg.step(func(done float64) { progress(0.1 + 0.9*(float64(i)+done)/float64(s.Iterations)) })
 		note()
-		progress(0.1 + 0.9*float64(i+1)/float64(s.Iterations))
 	}
 	out.Curve = append(out.Curve, curve...)
 	if p.noise != nil {

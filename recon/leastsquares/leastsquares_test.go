@@ -496,6 +496,19 @@ func TestProgressRisesToOne(t *testing.T) {
 	}
 }
 
+// The estimate covers what a problem counts for itself, and is no wild guess.
+func TestMemoryIsEstimatedFromAbove(t *testing.T) {
+	j := prepare(t, traces(t, body(3, [3]float64{}, [3]float64{8, 8, 8}), 40, 0, 1, 1, 2, 3), nil, 16, 24)
+	p, err := newProblem(j.sp, j.noise, j.g, j.weights, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	counted := 3*p.bytesPerDelay() + 4*3*int64(j.g.Voxels())
+	if got := Bytes(j.g, j.sp.BandMM, 3, 1); got < counted || got > 3*counted {
+		t.Errorf("estimated %d bytes, counted %d", got, counted)
+	}
+}
+
 func TestCornersOutsideTheFieldOfViewHaveNoAnswer(t *testing.T) {
 	j := tiny(t)
 	got := j.run(t, Defaults())

@@ -16,7 +16,8 @@ import (
 // The realisations are always the same, for any acquisition of the same shape.
 //
 // Errors: those of condition.Condition.
-func Noise(a *acquisition.Acquisition, s condition.Settings, c *condition.Constants, g condition.Geometry, realisations int) (*condition.Spokes, error) {
+func Noise(a *acquisition.Acquisition, s condition.Settings, c *condition.Constants, g condition.Geometry,
+	realisations int) (*condition.Spokes, error) {
 	of := *a
 	of.Delays, of.DelayUS = realisations, make([]float64, realisations)
 	of.Signal = make([]complex64, realisations*a.Shots*a.Samples)

@@ -30,9 +30,13 @@ type rule interface {
 
 // Penalties is the table of penalties. To add one: a row here.
 var Penalties = []Penalty{
-	{"tikhonov", "Tikhonov", "λ ∫f²: holds down what the data hardly determine; linear, and reads low by λ/(1+λ) of the value (Tikhonov 1963)", 1,
+	{"tikhonov", "Tikhonov",
+		"λ ∫f²: holds down what the data hardly determine; linear, and reads low by λ/(1+λ) of the value (Tikhonov 1963)", 1,
 		func(p *problem, s Settings, delays int) rule { return &identity{p, s.Weight, delays} }},
-	{"edges", "edge-preserving", "smooths steps between neighbouring voxels that are small against the edge setting and leaves larger ones; not linear: contrast below the edge setting is lost, noise is no longer the same everywhere (Charbonnier et al. 1997, lagged weights of Vogel & Oman 1996)", 3,
+	{"edges", "edge-preserving",
+		"smooths steps between neighbouring voxels that are small against the edge setting and leaves larger ones; " +
+			"not linear: contrast below the edge setting is lost, and noise is no longer the same everywhere " +
+			"(Charbonnier et al. 1997, lagged weights of Vogel & Oman 1996)", 3,
 		newEdges},
 }
 

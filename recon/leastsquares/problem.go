@@ -44,7 +44,8 @@ func newProblem(sp, noise *condition.Spokes, g volume.Grid, weights []float64, p
 	p := &problem{sp: sp, noise: noise, weights: weights, perDelay: 1, voxelMM: g.VoxelMM, voxel: 1}
 	if noise != nil {
 		if len(noise.Shot) != len(sp.Shot) || noise.Half != sp.Half || len(noise.Delays) == 0 {
-			return nil, fault.New(fault.Bug, "least squares", "noise of %d spokes to sample %d for data of %d to %d", len(noise.Shot), noise.Half, len(sp.Shot), sp.Half)
+			return nil, fault.New(fault.Bug, "least squares", "noise of %d spokes to sample %d for data of %d to %d",
+				len(noise.Shot), noise.Half, len(sp.Shot), sp.Half)
 		}
 		p.perDelay += len(noise.Delays)
 	}
@@ -65,16 +66,22 @@ func newProblem(sp, noise *condition.Spokes, g volume.Grid, weights []float64, p
 	return p, err
 }
 
-// findSupport takes the voxels of the circle or sphere of the field of view, or of the larger one that the object needs.
-func (p *problem) findSupport(g volume.Grid) {
-	radius := g.RadiusMM()
-	p.n = g.N
-	if object := p.sp.BandMM / bandMargin / 2; object > radius*(1+1e-6) {
+// boxOf returns the voxels of a box, and the radius of the circle or sphere in it, where the image is sought: that of the
+// field of view, or a larger one that the object needs.
+func boxOf(g volume.Grid, bandMM float64) (n [3]int, radius float64) {
+	n, radius = g.N, g.RadiusMM()
+	if object := bandMM / bandMargin / 2; object > radius*(1+1e-6) {
 		radius = object
 		for axis := range g.Dim() {
-			p.n[axis] = max(g.N[axis], 2*int(radius/g.VoxelMM[axis])+1)
+			n[axis] = max(g.N[axis], 2*int(radius/g.VoxelMM[axis])+1)
 		}
 	}
+	return n, radius
+}
+
+func (p *problem) findSupport(g volume.Grid) {
+	var radius float64
+	p.n, radius = boxOf(g, p.sp.BandMM)
 	box := volume.Grid{N: p.n, VoxelMM: g.VoxelMM}
 	for iz := range p.n[2] {
 		for iy := range p.n[1] {

@@ -29,11 +29,19 @@ type Density struct {
 
 // Densities is the table of density weights. To add one: a row here.
 var Densities = []Density{
-	{"solid-angle", "solid angle and ramp", "the share of directions of each spoke times |k| (2D) or k² (3D); unbiased for an object within half of 1/ΔK, and what back-projection uses",
+	{"solid-angle", "solid angle and ramp",
+		"the share of directions of each spoke times |k| (2D) or k² (3D); unbiased for an object within half of 1/ΔK, " +
+			"and what back-projection uses",
 		solidAngleDensity},
-	{"cell-volume", "cell area or volume", "the area or volume of k-space nearest to each sample, filling the disc or ball exactly; reads a compact object high, by π²/12·(aΔK)² of its value in a disc of radius a (everywhere in the image alike) and by π²/6·(aΔK)² in the middle of a ball: up to 4 % and 8 %",
+	{"cell-volume", "cell area or volume",
+		"the area or volume of k-space nearest to each sample, filling the disc or ball exactly; reads a compact object high, " +
+			"by π²/12·(aΔK)² of its value in a disc of radius a (everywhere in the image alike: the corner of |k|) and by " +
+			"π²/6·(aΔK)² in the middle of a ball (the ΔK³/12 of its shells): up to 4 % and 8 %",
 		cellVolumeDensity},
-	{"iterative", "iterative", "directions weighed by an iteration that evens out their density as a smoothing kernel sees it (Pipe & Menon 1999), times |k| or k² along the spoke; where directions leave gaps or clump, their density comes out two to three times as even as with solid angles, for a few per cent more noise. Scaled so that a uniform body reads 1",
+	{"iterative", "iterative",
+		"directions weighed by an iteration that evens out their density as a smoothing kernel sees it (Pipe & Menon 1999), " +
+			"times |k| or k² along the spoke; where directions leave gaps or clump, their density comes out two to three times as even as " +
+			"with solid angles, for a few per cent more noise. Scaled so that a uniform body reads 1",
 		iterativeDensity},
 }
 
