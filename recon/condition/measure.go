@@ -86,6 +86,9 @@ func checkUsable(a *acquisition.Acquisition, s Settings) error {
 		return fault.New(fault.BadSetting, "recipe conditioning", "every image shot or every delay is excluded; keep at least one of each")
 	}
 	zero := a.TimeZeroSample + s.TimeShiftSamples
+	if first := firstUsable(s.DeadSamples, zero); a.Domain == acquisition.Time && first > a.Samples/2 {
+		return fault.New(fault.BadSetting, "recipe conditioning.deadSamples", "%d dead samples leave less than half of the %d recorded ones; use fewer", s.DeadSamples, a.Samples)
+	}
 	if a.Domain == acquisition.Time && (zero < 0 || zero > float64(a.Samples-1)) {
 		return fault.New(fault.Unsupported, "time_zero_sample", "k = 0 lies at sample %g, outside the %d recorded ones; spokes must contain it", zero, a.Samples)
 	}
@@ -113,7 +116,9 @@ func echoHeights(a *acquisition.Acquisition, s Settings, c *Constants) []complex
 // heightOf returns the corrected signal at k = 0, looking across the dead time where there is one.
 func heightOf(a *acquisition.Acquisition, s Settings, c *Constants, zero float64, trace []complex64) complex128 {
 	if s.DeadSamples > 0 && a.Domain == acquisition.Time {
-		beta := math.Min(1, 1.15*c.ExtentMM/a.AliasFreeMM())
+		// Half an echo looks wider than the object is; the band is never wider than what bridges the hole.
+		hole := float64(firstUsable(s.DeadSamples, zero)) - zero
+		beta := math.Min(math.Min(1, 1.15*c.ExtentMM/a.AliasFreeMM()), bridged/hole)
 		if rs, err := newResampler(a.Samples, firstUsable(s.DeadSamples, zero), beta, []place{zero}); err == nil {
 			if v, ok := rs.Apply(0, trace); ok {
 				return v
@@ -153,6 +158,7 @@ func offsetFromEnds(a *acquisition.Acquisition, s Settings, noiseSD []float64) (
 		return 0, false
 	}
 	ends, shots, zero := endSamples(a, s), s.KeptShots(a), a.TimeZeroSample+s.TimeShiftSamples
+	zero = math.Max(zero, float64(firstUsable(s.DeadSamples, zero)))
 	heights, means := make([]complex128, len(delays)), make([]complex128, len(delays))
 	for i, d := range delays {
 		for _, shot := range shots {
@@ -234,8 +240,12 @@ func newSpectra(a *acquisition.Acquisition, s Settings) *spectra {
 		sp.shots = append(sp.shots, all[i])
 	}
 	sp.plan, _ = fft.NewPlan[complex128](fft.FastLength(a.Samples)) // FastLength is always a valid length
+	first := firstUsable(s.DeadSamples, a.TimeZeroSample+s.TimeShiftSamples)
 	for j := range a.Samples {
-		w := 0.5 - 0.5*math.Cos(2*math.Pi*(float64(j)+0.5)/float64(a.Samples))
+		w := 0.5 - 0.5*math.Cos(2*math.Pi*(float64(j-first)+0.5)/float64(a.Samples-first))
+		if j < first {
+			w = 0
+		}
 		sp.taper = append(sp.taper, w)
 		sp.energy += w * w
 	}

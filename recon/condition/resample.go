@@ -79,9 +79,12 @@ func newResampler(samples, first int, beta float64, at []place) (*Resampler, err
 	return r, nil
 }
 
-// deepestHole returns how many samples before the first usable one can be extrapolated: a quarter of 1/band, where the
-// error for a tone inside the band stays below a thousandth.
-func deepestHole(beta float64) float64 { return 0.25/beta + 1e-3 }
+// bridged is how much of 1/band can be extrapolated before the first usable sample: a quarter, where the error for a tone
+// inside the band stays below half a percent.
+const bridged = 0.25
+
+// deepestHole returns how many samples before the first usable one can be extrapolated.
+func deepestHole(beta float64) float64 { return bridged/beta + 1e-3 }
 
 func bandMatrix(n int, beta float64) *mat.SymDense {
 	s := mat.NewSymDense(n, nil)

@@ -220,7 +220,12 @@ func (r *reader) resampler(shot int) (*Resampler, error) {
 	for m := -r.sp.Half; m <= r.sp.Half; m++ {
 		at = append(at, zero+float64(m)*step)
 	}
-	rs, err := newResampler(r.a.Samples, firstUsable(r.dead, zero), r.beta, at)
+	first := firstUsable(r.dead, zero)
+	rs, err := newResampler(r.a.Samples, first, r.beta, at)
+	if err == nil && rs.weights[r.sp.Half] == nil {
+		return nil, fault.New(fault.BadSetting, "recipe conditioning.deadSamples", "the first usable sample comes %.3g samples after k = 0; a field of view of %.3g mm lets %.3g be bridged; use fewer dead samples or a smaller field",
+			float64(first)-zero, r.sp.BandMM, deepestHole(r.beta))
+	}
 	if err == nil {
 		r.resamplers[key] = rs
 	}

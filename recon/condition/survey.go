@@ -26,6 +26,8 @@ type Survey struct {
 	Reach     []int            // [shot] positions run from -Reach to Reach
 	Values    [][][]complex128 // [shot][delay][position] projection, turned only by what the settings ask for
 
+	heights [][]complex128 // [shot][delay] signal at k = 0, where one half of the echo is missing; else nil
+
 	ShiftSamples []float64 // [shot] by how much k = 0 lies later than assumed; 0 where Symmetric is false
 	CommonShift  float64   // median of them
 	Curve        []float64 // [delay] median over the shots of the phased integral of the projection
@@ -100,6 +102,8 @@ type traceView struct {
 	weight    []float64 // [sample]
 	energy    float64   // Σ weight²
 	quiet     []float64 // [sample] weights for the noise where one half of the echo is missing; else nil
+	dead      int       // samples after k = 0 that are not used
+	beta      float64   // band of the object over the alias-free field
 	farMM     float64   // FarMM of the object
 	zero      float64
 	trace     []complex64
@@ -118,7 +122,7 @@ func (v *Survey) viewTraces(a *acquisition.Acquisition, s Settings, c *Constants
 		w.energy += x * x
 	}
 	if !v.Symmetric {
-		w.quiet = quietWeights(a.Samples)
+		w.quiet, w.dead, w.beta = quietWeights(a.Samples), s.DeadSamples, math.Min(1, 1.15*c.ExtentMM/a.AliasFreeMM())
 	}
 	for i, shot := range v.Shots {
 		dk := acquisition.KPerNS(a.Strength(shot), a.DwellNS)
@@ -130,6 +134,7 @@ func (v *Survey) viewTraces(a *acquisition.Acquisition, s Settings, c *Constants
 		}
 		if w.quiet != nil {
 			w.transform(v, shot, w.quiet)
+			v.heights = append(v.heights, w.heightsOf(v, shot))
 		}
 		for d := range v.Delays {
 			w.storeBeyond(v, i, d)
@@ -206,6 +211,24 @@ func (w *traceView) transform(v *Survey, shot int, weight []float64) {
 	}
 	w.plan.Inverse(w.data, w.scratch, lanes)
 	w.zero = w.corrector.ZeroSample(shot)
+}
+
+// heightsOf returns the signal at k = 0 of one shot per delay. The integral of a projection made from half an echo would
+// not do: its other channel is not zero.
+func (w *traceView) heightsOf(v *Survey, shot int) []complex128 {
+	out := make([]complex128, len(v.Delays))
+	zero := w.corrector.ZeroSample(shot)
+	resampler, err := newResampler(w.a.Samples, firstUsable(w.dead, zero), w.beta, []place{zero})
+	for d, delay := range v.Delays {
+		w.corrector.Load(w.trace, delay, shot)
+		out[d] = atTimeZero(w.a, zero, w.trace)
+		if err == nil {
+			if value, ok := resampler.Apply(0, w.trace); ok {
+				out[d] = value
+			}
+		}
+	}
+	return out
 }
 
 // store takes positions near the object into the survey.
@@ -302,8 +325,11 @@ func twisted(values []complex128, perStep, delta float64) complex128 {
 	return sum
 }
 
-// integrals returns the integral of the projection of one shot per delay, the common shift taken out.
+// integrals returns the integral of the projection of one shot per delay, the common shift taken out: the signal at k = 0.
 func (v *Survey) integrals(i int) []complex128 {
+	if v.heights != nil {
+		return v.heights[i]
+	}
 	out := make([]complex128, len(v.Delays))
 	for d, row := range v.Values[i] {
 		out[d] = twisted(row, v.DeltaK[i]*v.StepMM[i], v.CommonShift) * complex(v.StepMM[i], 0)

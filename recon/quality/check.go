@@ -1,6 +1,8 @@
 package quality
 
 import (
+	"math"
+
 	"torrloom/recon/acquisition"
 	"torrloom/recon/condition"
 	"torrloom/recon/fault"
@@ -89,7 +91,7 @@ func Examine(a *acquisition.Acquisition, s condition.Settings, known Known) *Rep
 
 func refused(s condition.Settings, err error) *Report {
 	f := fault.From(err)
-	return &Report{Proposed: s, Findings: []Finding{{Level: Stop, Check: "conditioning", Text: f.Error(), Rule: "the data can be conditioned at all",
+	return &Report{Proposed: s, Shots: []int{}, Series: []Series{}, DelayUS: []float64{}, Curve: []float64{}, Findings: []Finding{{Level: Stop, Check: "conditioning", Text: f.Error(), Rule: "the data can be conditioned at all",
 		Advice: "change what the text names", Shots: []int{}, Delays: []int{}}}}
 }
 
@@ -105,6 +107,9 @@ func (c Check) findings(s *Subject) []Finding {
 		f.Check, f.Rule, f.Source = c.Name, c.Rule, c.Source
 		if f.Level != Fine {
 			f.Advice = c.Advice
+		}
+		if math.IsNaN(f.Value) || math.IsInf(f.Value, 0) {
+			f.Value = 0 // JSON has no such numbers; the text says what is not known
 		}
 		if f.Shots == nil {
 			f.Shots = []int{}

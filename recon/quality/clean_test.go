@@ -121,6 +121,73 @@ func TestFalseAlarmsAreAtMostOnePercentPerCheck(t *testing.T) {
 	}
 }
 
+// Half echoes and recorded projections have fewer sets to be silent on; one alarm in 40 would be allowed to no check.
+func TestHalfEchoesAndProjectionsAreSilentWhenClean(t *testing.T) {
+	for seed := range uint64(40) {
+		whole := randomClean(t, seed)
+		for name, a := range map[string]*acquisition.Acquisition{"half echo": halfOf(whole), "projections": projectionsOf(t, seed)} {
+			for _, f := range Examine(a, condition.Defaults(), Known{}).Findings {
+				if f.Level != Fine && f.Check != "echo-halves" {
+					t.Errorf("%s, seed %d: %s %s: %s", name, seed, f.Level, f.Check, f.Text)
+				}
+			}
+		}
+	}
+}
+
+// halfOf drops all but eight samples before the echo.
+func halfOf(a *acquisition.Acquisition) *acquisition.Acquisition {
+	out := *a
+	drop := int(a.TimeZeroSample) - 8
+	out.Samples, out.TimeZeroSample, out.Signal = a.Samples-drop, a.TimeZeroSample-float64(drop), nil
+	for d := range a.Delays {
+		for s := range a.Shots {
+			out.Signal = append(out.Signal, a.Trace(d, s)[drop:]...)
+		}
+	}
+	return &out
+}
+
+// projectionsOf returns noisy exact projections of a random object.
+func projectionsOf(t testing.TB, seed uint64) *acquisition.Acquisition {
+	t.Helper()
+	r := rand.New(rand.NewPCG(seed, 78))
+	dim := 2 + int(seed%2)
+	p := randomObject(t, r, dim)
+	a := &acquisition.Acquisition{Dim: dim, Delays: 4, Shots: 90, Samples: 61, DelayUS: []float64{0.9, 1.5, 2.5, 4}, Sequence: acquisition.EchoDecay,
+		Domain: acquisition.Projection, PositionStepMM: 0.8, TimeZeroSample: 30.3}
+	directions := phantom.EqualAngles(90)
+	if dim == 3 {
+		directions = phantom.GoldenHalfSphere(90)
+	}
+	for d := range a.Delays {
+		for _, n := range directions {
+			for j := range a.Samples {
+				v := p.Projection(n, (float64(j)-30.3)*0.8) * math.Exp(-0.5*a.DelayUS[d])
+				a.Signal = append(a.Signal, complex(float32(v+0.02*r.NormFloat64()), 0))
+			}
+		}
+	}
+	a.GradientMTPerM = directions
+	if err := a.Check(); err != nil {
+		t.Fatal(err)
+	}
+	return a
+}
+
+func TestCleanGridsOfGradientsAreSilent(t *testing.T) {
+	for seed := range uint64(20) {
+		a := gradientGrid(t, func(pr *phantom.SinglePointProtocol) {
+			pr.Seed, pr.BroadeningPerUS, pr.PhaseRad, pr.FrequencyOffsetMHz = seed, 0.1*float64(seed%5), float64(seed), 0.02*float64(seed%3)
+		})
+		for _, f := range Examine(a, condition.Defaults(), Known{}).Findings {
+			if f.Level != Fine {
+				t.Errorf("seed %d: %s %s: %s", seed, f.Level, f.Check, f.Text)
+			}
+		}
+	}
+}
+
 func spokeChecks() []Check {
 	var out []Check
 	for _, c := range Checks {

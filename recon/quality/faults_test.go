@@ -1,8 +1,10 @@
 package quality
 
 import (
+	"encoding/json"
 	"math"
 	"slices"
+	"strings"
 	"testing"
 
 	"torrloom/recon/acquisition"
@@ -86,9 +88,6 @@ func withSettings(change func(a *acquisition.Acquisition, s *condition.Settings,
 		return a, s, k
 	}
 }
-
-// mT returns the file's frequency of 1 kHz in terms of the protocol: mm per kHz at 20 mT/m.
-const echoHeight = 1900 // of the clean acquisition, roughly
 
 var nan = math.NaN()
 
@@ -216,6 +215,115 @@ func TestEveryCheckFindsItsFault(t *testing.T) {
 	}
 }
 
+// What a finding proposes deals with what it found: with the proposed settings the finding is fine.
+func TestProposalsPutRightWhatTheyAreFor(t *testing.T) {
+	proposing := map[string]bool{"silent-shots": true, "noisy-shots": true, "uneven-shots": true, "shot-phase": true, "single-traces": true,
+		"neighbours": true, "frequency-offset": true, "frequency-drift": true, "time-zero": true, "time-zero-spread": true, "phase-drift": true,
+		"amplitude-drift": true, "offset": true, "quadrature": true}
+	for _, f := range faults {
+		if !proposing[f.check] {
+			continue
+		}
+		a, s, known := f.plant(t)
+		before := Examine(a, s, known)
+		after := Examine(a, before.Proposed, known)
+		for _, x := range after.Findings {
+			if x.Check == f.check && x.Level != Fine {
+				t.Errorf("%s: still %s: %s %v (settings %+v)", f.name, x.Level, x.Text, x.Shots, before.Proposed)
+			}
+		}
+	}
+}
+
+func TestBaselineShotsAreProposedWhenTheyHoldRinging(t *testing.T) {
+	a := clean(t)
+	phantom.Ring(a, 60, 20)
+	for d := range a.Delays {
+		for s, role := range a.ShotRole {
+			if role == acquisition.RoleZeroGradient {
+				one := &acquisition.Acquisition{Signal: a.Trace(d, s), Delays: 1, Shots: 1, Samples: a.Samples}
+				phantom.Silence(one, 0, 5, uint64(s+d))
+				phantom.Ring(one, 60, 20)
+			}
+		}
+	}
+	for s, role := range a.ShotRole {
+		if role == acquisition.RoleZeroGradient {
+			a.ShotRole[s] = acquisition.RoleOffResonance
+		}
+	}
+	r := Examine(a, condition.Defaults(), Known{})
+	if r.Proposed.Offset != "baseline-shots" {
+		t.Errorf("offset %q proposed, want baseline-shots", r.Proposed.Offset)
+	}
+	if again := Examine(a, r.Proposed, Known{}); Worst(again.Findings) != Fine {
+		t.Errorf("after subtracting them: %+v", again.Findings[0])
+	}
+}
+
+func TestWashOutIsGivenPerMinute(t *testing.T) {
+	a := clean(t)
+	for s := range a.Shots {
+		a.Optional.ShotTimeS = append(a.Optional.ShotTimeS, 3*float64(s))
+		phantom.Weaken(a, s, math.Exp(-0.02*3*float64(s)/60)) // 2 % per minute
+	}
+	for _, f := range Examine(a, condition.Defaults(), Known{}).Findings {
+		if f.Check == "amplitude-drift" && (f.Level != Doubt || !strings.Contains(f.Text, "-2 % per minute")) {
+			t.Errorf("%s: %s", f.Level, f.Text)
+		}
+	}
+}
+
+func TestAnAcquisitionThatCannotBeConditionedIsStopped(t *testing.T) {
+	a := clean(t)
+	a.TimeZeroSample = -5
+	r := Examine(a, condition.Defaults(), Known{})
+	if Worst(r.Findings) != Stop || r.Findings[0].Check != "conditioning" {
+		t.Errorf("%+v", r.Findings)
+	}
+}
+
+// A report is a JSON document: every number is finite, every list is there.
+func TestReportsAreJSONWithTheirLists(t *testing.T) {
+	a := clean(t)
+	phantom.Silence(a, 3, 5, 1)
+	for _, one := range []*acquisition.Acquisition{a, gradientGrid(t, plain)} {
+		text, err := json.Marshal(Examine(one, condition.Defaults(), Known{}))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if strings.Contains(string(text), ":null") {
+			t.Errorf("a null in %s", text[strings.Index(string(text), ":null")-60:])
+		}
+		for _, key := range []string{"\"level\":", "\"check\":", "\"shots\":[", "\"delays\":[", "\"advice\":", "\"proposed\":", "\"series\":["} {
+			if !strings.Contains(string(text), key) {
+				t.Errorf("no %s in the report", key)
+			}
+		}
+	}
+}
+
+// Findings are sorted by level, and every check explains itself.
+func TestChecksExplainThemselves(t *testing.T) {
+	seen := map[string]bool{}
+	for _, c := range Checks {
+		if c.Name == "" || c.Label == "" || c.Rule == "" || c.Source == "" || c.Advice == "" || len(c.Needs) == 0 || seen[c.Name] {
+			t.Errorf("%+v", c)
+		}
+		seen[c.Name] = true
+	}
+	a := clean(t)
+	phantom.Clip(a, 0.9)
+	phantom.Silence(a, 3, 5, 1)
+	rank := map[Level]int{Stop: 0, Doubt: 1, Fine: 2}
+	findings := Examine(a, condition.Defaults(), Known{}).Findings
+	for i := 1; i < len(findings); i++ {
+		if rank[findings[i].Level] < rank[findings[i-1].Level] {
+			t.Errorf("%s comes after %s", findings[i].Level, findings[i-1].Level)
+		}
+	}
+}
+
 func (f spoilt) compare(t *testing.T, r *Report) {
 	t.Helper()
 	var own []Finding
@@ -246,7 +354,7 @@ func (f spoilt) compare(t *testing.T, r *Report) {
 func gradientGrid(t testing.TB, change func(pr *phantom.SinglePointProtocol)) *acquisition.Acquisition {
 	t.Helper()
 	pr := phantom.SinglePointProtocol{Sequence: acquisition.FreeDecay, DelayUS: []float64{0}, GradientMTPerM: phantom.CubeGradients(3, 11, 20),
-		DwellNS: 20, Samples: 12, TimeZeroSample: -10, NoiseSD: 3, Seed: 5}
+		DwellNS: 20, Samples: 11, TimeZeroSample: -10, NoiseSD: 3, Seed: 5}
 	change(&pr)
 	a, err := object(t).AcquireSinglePoint(pr)
 	if err != nil {

@@ -97,6 +97,8 @@ func offset(s *Subject) []Finding {
 	value, stands := condition.EndOffset(s.A, s.S, s.C)
 	share := 100 * cmplx.Abs(value) / s.largestEcho()
 	switch {
+	case s.S.Offset == "baseline-shots":
+		return []Finding{found(Fine, 0, "%", "off-resonance shots are subtracted, and an offset with them")}
 	case s.S.Offset == "trace-ends" && stands:
 		return []Finding{found(Fine, share, "%", "an offset of %.2g %% of the largest echo is subtracted", share)}
 	case !stands:
@@ -116,6 +118,9 @@ type mirror struct {
 }
 
 func (s *Subject) findMirror() mirror {
+	if !s.V.Symmetric { // the other channel of half an echo holds more than a mirror image
+		return mirror{mat.NewSymDense(2, nil), mat.NewVecDense(2, nil), 0, math.Inf(1)}
+	}
 	normal, right, sd := s.mirrorEquations()
 	// The first two unknowns are eliminated, so that what is left is the information on the last two.
 	for p := range 2 {
