@@ -74,6 +74,7 @@ type Acquisition struct {
 	ShotRole       []int // [shot]
 
 	Optional Optional
+	Warnings []string // what every output must say beside the numbers, such as that the file was cut short
 }
 
 // Optional holds the fields that are carried along and used where they matter. A nil number was not in the file.

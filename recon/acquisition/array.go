@@ -78,6 +78,7 @@ type Array struct {
 	Unit       string            // as the file states it, or empty
 	Attributes map[string]string // whatever else the file says of it
 	AfterFile  bool              // Name is the file's, which held none for it
+	Truncated  *Truncation       // nil when the file held all of it
 
 	layout Layout
 	raw    []byte

@@ -19,6 +19,7 @@ func full(domain Domain) *Acquisition {
 		GradientMTPerM: [][3]float64{{0, 0, 15}, {12, 9, 0}, {0, 0, 0}},
 		DelayUS:        []float64{0.5, 8}, TimeZeroSample: 1.25, Sequence: InversionRecovery, Encoding: Spoke, Domain: domain,
 		ShotRole: []int{RoleImage, RoleImage, RoleZeroGradient},
+		Warnings: []string{"the file was cut short", "and another"},
 		Optional: Optional{
 			EchoTimeUS: some(0.6), RepetitionUS: some(60), CarrierMHz: some(721.5), TemperatureC: some(37),
 			ShotTimeS: []float64{0, 1, 2}, Probe: "trityl", Note: "two lines\nof text",
