@@ -123,20 +123,41 @@ const (
 	foreignFloor = 0.08 // of the projection
 )
 
+// robustMisfit returns the least misfit of shot i when any one of its neighbours is left out, so that a shot is not blamed
+// for one bad neighbour.
+func (s *Subject) robustMisfit(i int, near []neighbour) float64 {
+	least := math.Inf(1)
+	for k := range near {
+		others := append(append([]neighbour{}, near[:k]...), near[k+1:]...)
+		least = math.Min(least, s.misfitOf(i, others, s.predictionWeights(i, others)))
+	}
+	return least
+}
+
 // compareNeighbours finds the shots that do not belong among their neighbours in direction. The worst is taken out and its
 // neighbours are compared anew, until none stands out, so that one bad shot does not drag others along.
 func (s *Subject) compareNeighbours(g *standing, taken map[int]bool) {
 	n := len(s.V.Shots)
 	g.misfit = make([]float64, n)
 	near := make([][]neighbour, n)
+	suspicious := math.Inf(1)
 	renew := func(i int) {
 		near[i] = s.neighbours(i, s.neighbourCount(), func(j int) bool { return !taken[j] })
 		g.misfit[i] = s.misfitOf(i, near[i], s.predictionWeights(i, near[i]))
+		if g.misfit[i] > suspicious {
+			g.misfit[i] = math.Min(g.misfit[i], s.robustMisfit(i, near[i]))
+		}
 	}
 	for i := range n {
 		renew(i)
 	}
 	g.among, g.atRandom = median(s.misfitsKept(g, taken)), s.misfitAtRandom(taken)
+	suspicious = math.Max(2*g.among, foreignFloor/2)
+	for i := range n {
+		if g.misfit[i] > suspicious {
+			renew(i)
+		}
+	}
 	for range n / 10 {
 		worst, limit := -1, 1.0
 		for i, m := range g.misfit {

@@ -379,3 +379,50 @@ var singlePointFaults = []spoilt{
 	{name: "a noisy grid", check: "single-point-noise", level: Doubt, value: nan, plant: onGrid(func(pr *phantom.SinglePointProtocol) { pr.NoiseSD = 600 }, asIs)},
 	{name: "a weak shot of a grid", check: "single-point-pairs", level: Doubt, value: nan, shots: []int{664, 666}, plant: onGrid(plain, func(a *acquisition.Acquisition) { phantom.Weaken(a, 664, 0.5) })},
 }
+
+// The same faults are found in 2D, all at once.
+func TestFaultsAreFoundIn2DAllAtOnce(t *testing.T) {
+	pr := protocol()
+	pr.Directions, pr.NoiseSD = nil, 0.3
+	for i := range 150 {
+		pr.Directions = append(pr.Directions, phantom.EqualAngles(150)[i*61%150])
+	}
+	disc := func(r, rate, x, y, density float64) phantom.Body {
+		return phantom.Body{Density: density, R1PerUS: rate, Shape: phantom.Shape{Dim: 2, SemiMM: [3]float64{r, 0.8 * r}, CentreMM: [3]float64{x, y}}}
+	}
+	p, err := phantom.Nested(2, disc(9, 0.45, 1, -1, 0.6), disc(3, 0.18, -2, 2, 1))
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := p.Acquire(pr)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if r := Examine(a, condition.Defaults(), Known{}); Worst(r.Findings) != Fine {
+		t.Errorf("before any fault: %+v", r.Findings[0])
+	}
+	phantom.DriftFrequency(a, -60, 60)
+	phantom.Weaken(a, 12, 0.8)
+	phantom.Silence(a, 50, 0.3, 1)
+	phantom.Turn(a, 77, 0.5)
+	phantom.AddNoise(a, 99, 1.5, 2)
+	phantom.SwapGradients(a, 120, 133)
+	phantom.MistakeTimeZero(a, -3)
+	r := Examine(a, condition.Defaults(), Known{})
+	want := map[string][]int{"uneven-shots": {12}, "silent-shots": {50}, "shot-phase": {77}, "noisy-shots": {99}, "neighbours": {120, 133}}
+	for _, f := range r.Findings {
+		t.Logf("%s %s: %s %v", f.Level, f.Check, f.Text, f.Shots)
+		if shots, ok := want[f.Check]; ok && !slices.Equal(f.Shots, shots) {
+			t.Errorf("%s names %v, planted %v", f.Check, f.Shots, shots)
+		}
+		if f.Check == "frequency-drift" && !(math.Abs(f.Value-120) <= 6) {
+			t.Errorf("drift %.2f kHz, planted 120", f.Value)
+		}
+		if f.Check == "time-zero" && !(math.Abs(f.Value+3) <= 0.2) {
+			t.Errorf("time zero %.3f ns, planted -3", f.Value)
+		}
+	}
+	if again := Examine(a, r.Proposed, Known{}); Worst(again.Findings) != Fine {
+		t.Errorf("with the proposals: %+v", again.Findings[0])
+	}
+}

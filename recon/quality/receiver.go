@@ -41,44 +41,63 @@ func clipping(s *Subject) []Finding {
 	return []Finding{found(Stop, 100*share, "%", "%.2g %% of the traces are cut off at the largest value", 100*share)}
 }
 
+// sizeIn returns the size of a value in one channel.
+func sizeIn(v complex64, channel int) float32 {
+	x := real(v)
+	if channel == 1 {
+		x = imag(v)
+	}
+	if x < 0 {
+		return -x
+	}
+	return x
+}
+
+// nearTop is what counts as just below the largest value.
+const nearTop = 0.98
+
 // flatTops returns how many traces stay at the largest size of a channel for three samples, how many samples are there,
-// and how many lie less than 2 % below.
+// and how many lie just below.
 func (s *Subject) flatTops(channel int) (runs, at, near int) {
-	value := func(v complex64) float32 {
-		if channel == 0 {
-			return max(real(v), -real(v))
-		}
-		return max(imag(v), -imag(v))
-	}
+	tops := make([]float32, s.A.Delays*s.A.Shots)
 	var most float32
-	for _, v := range s.A.Signal {
-		most = max(most, value(v))
-	}
-	if most == 0 {
-		return 0, 0, 0
-	}
-	for d := range s.A.Delays {
-		for shot := range s.A.Shots {
-			length, longest := 0, 0
-			for _, v := range s.A.Trace(d, shot) {
-				switch x := value(v); {
-				case x == most:
-					length++
-					at++
-				case x > 0.98*most:
-					near++
-					length = 0
-				default:
-					length = 0
-				}
-				longest = max(longest, length)
+	for k := range tops {
+		for _, v := range s.A.Signal[k*s.A.Samples : (k+1)*s.A.Samples] {
+			if x := sizeIn(v, channel); x > tops[k] {
+				tops[k] = x
 			}
-			if longest >= 3 {
-				runs++
-			}
+		}
+		most = max(most, tops[k])
+	}
+	for k, top := range tops {
+		if top == 0 || top < nearTop*most {
+			continue
+		}
+		run, flat, below := flatTop(s.A.Signal[k*s.A.Samples:(k+1)*s.A.Samples], channel, most)
+		at, near = at+flat, near+below
+		if run >= 3 {
+			runs++
 		}
 	}
 	return runs, at, near
+}
+
+// flatTop returns the longest run of samples of a trace at the size top, how many are there, and how many just below.
+func flatTop(trace []complex64, channel int, top float32) (longest, at, near int) {
+	run := 0
+	for _, v := range trace {
+		switch x := sizeIn(v, channel); {
+		case x == top:
+			run++
+			at++
+			longest = max(longest, run)
+			continue
+		case x > nearTop*top:
+			near++
+		}
+		run = 0
+	}
+	return longest, at, near
 }
 
 // largestEcho returns the size of the largest echo of the delays, in the unit of the signal.
