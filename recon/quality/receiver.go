@@ -43,14 +43,10 @@ func clipping(s *Subject) []Finding {
 
 // sizeIn returns the size of a value in one channel.
 func sizeIn(v complex64, channel int) float32 {
-	x := real(v)
 	if channel == 1 {
-		x = imag(v)
+		return float32(math.Abs(float64(imag(v))))
 	}
-	if x < 0 {
-		return -x
-	}
-	return x
+	return float32(math.Abs(float64(real(v))))
 }
 
 // nearTop is what counts as just below the largest value.

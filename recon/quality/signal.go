@@ -119,8 +119,8 @@ type residue struct {
 }
 
 const (
-	residueTraces = 1024 // looked at; about 100000 samples give the SD of a channel to 0.3 %
-	residueKept   = 0.3  // least part of the alias-free field that must lie beyond the object
+	residueTraces = 512 // looked at; 50000 samples or more give the SD of a channel to 0.5 %
+	residueKept   = 0.3 // least part of the alias-free field that must lie beyond the object
 )
 
 func (s *Subject) makeResidue() residue {
@@ -129,8 +129,9 @@ func (s *Subject) makeResidue() residue {
 	if !(outside >= residueKept) || !s.noisy() {
 		return r
 	}
-	plan, _ := fft.NewPlan[complex128](fft.FastLength(s.A.Samples)) // FastLength is always a valid length
-	corrector := condition.NewCorrector(s.A, s.S, s.C, s.V.Delays)
+	w := residueWork{corrector: condition.NewCorrector(s.A, s.S, s.C, s.V.Delays), trace: make([]complex64, s.A.Samples)}
+	w.plan, _ = fft.NewPlan[complex128](fft.FastLength(s.A.Samples)) // FastLength is always a valid length
+	w.row, w.scratch = make([]complex128, w.plan.Len()), make([]complex128, w.plan.Len())
 	total := len(s.V.Shots) * len(s.V.Delays)
 	step := max(1, total/residueTraces)
 	if step > 1 {
@@ -139,7 +140,7 @@ func (s *Subject) makeResidue() residue {
 	for at := 0; at < total; at += step {
 		i, d := at/len(s.V.Delays), at%len(s.V.Delays)
 		if !contains(s.standing.loud, i) {
-			s.addResidue(&r, plan, corrector, i, s.V.Delays[d])
+			s.addResidue(&r, w, i, s.V.Delays[d])
 		}
 	}
 	// Where much more is left than noise, it is the object, which the trace is too short to filter out.
@@ -150,24 +151,33 @@ func (s *Subject) makeResidue() residue {
 	return r
 }
 
-func (s *Subject) addResidue(r *residue, plan *fft.Plan[complex128], corrector *condition.Corrector, i, delay int) {
-	n, samples := plan.Len(), s.A.Samples
-	trace, row, scratch := make([]complex64, samples), make([]complex128, n), make([]complex128, n)
+// residueWork is what the traces of a residue share.
+type residueWork struct {
+	plan         *fft.Plan[complex128]
+	corrector    *condition.Corrector
+	trace        []complex64
+	row, scratch []complex128
+}
+
+func (s *Subject) addResidue(r *residue, w residueWork, i, delay int) {
+	n, samples := w.plan.Len(), s.A.Samples
+	trace, row, scratch, corrector := w.trace, w.row, w.scratch, w.corrector
+	clear(row)
 	corrector.Load(trace, delay, s.V.Shots[i])
 	for j, v := range trace {
 		row[j] = complex128(v) * complex(edge(j, samples, s.V.Symmetric), 0)
 	}
-	plan.Inverse(row, scratch, 1)
+	w.plan.Inverse(row, scratch, 1)
 	for x := range int(math.Ceil(condition.FarMM(s.A, s.C.ExtentMM)*s.V.DeltaK[i]*float64(n))) + 1 {
 		row[x], row[(n-x)%n] = 0, 0
 	}
-	plan.Forward(row, scratch, 1)
+	w.plan.Forward(row, scratch, 1)
 	// Next to the echo, and where the trace is faded out, more than noise is left.
 	echo := 4 / (s.C.ExtentMM * s.V.DeltaK[i])
 	for j := range samples {
-		w := edge(j, samples, s.V.Symmetric)
-		if w > 0.7 && math.Abs(float64(j)-corrector.ZeroSample(s.V.Shots[i])) > echo {
-			scale := 1 / (w * float64(n) * s.C.NoiseSD[delay])
+		weight := edge(j, samples, s.V.Symmetric)
+		if weight > 0.7 && math.Abs(float64(j)-corrector.ZeroSample(s.V.Shots[i])) > echo {
+			scale := 1 / (weight * float64(n) * s.C.NoiseSD[delay])
 			r.i, r.q = append(r.i, real(row[j])*scale), append(r.q, imag(row[j])*scale)
 			r.shots = append(r.shots, i)
 		}
