@@ -3,6 +3,7 @@
 //	go run ./build site    writes out/torrloom.html, the whole program in one file
 //	go run ./build serve   makes it and serves it on this machine
 //	go run ./build check   runs every test; what a change has to pass
+//	go run ./build bench   times it in Chromium, natively and beside peers
 //
 // To add a verb: a file of its name and a row in verbs.
 package main
@@ -22,6 +23,7 @@ var verbs = []verb{
 	{"site", "write out/torrloom.html", runSite},
 	{"serve", "make it and serve it on this machine; -port N", runServe},
 	{"check", "run every test", runCheck},
+	{"bench", "time it beside peers and write build/bench.md; -repeats N, -large=false", runBench},
 }
 
 func main() {
