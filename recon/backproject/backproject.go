@@ -24,7 +24,7 @@ type fineness struct {
 
 // fine is what images are made with. The damping of straight lines and of nearest entries is compensated, see
 // compensated; what is left differs from spoke to spoke and averages to 1e-3 of an image from some hundred spokes.
-var fine = fineness{transformed: 8, between: 4}
+var fine = fineness{transformed: 4, between: 8}
 
 // chunk is how many spokes are filtered, smeared back and reported together: enough to keep the passes over the image
 // cheap, few enough for progress at the pace of a screen. A multiple of four.
@@ -83,7 +83,8 @@ type source struct {
 	pairs    int // of delays
 
 	plan       *fft.Plan[complex64]
-	line, work []complex64 // [position][pair], one period
+	block      int         // spokes transformed together
+	line, work []complex64 // [position][spoke of the block][pair], one period
 	between    int
 	reach      int       // transformed samples on either side of the gradient centre
 	stepMM     float64   // distance of table entries
@@ -95,7 +96,8 @@ func newSource(sp *condition.Spokes, g volume.Grid, axis, filter []float64, f fi
 	length := fft.FastLength(f.transformed * 2 * sp.Half)
 	s := &source{sp: sp, g: g, axis: axis, filter: compensated(filter, length, f), from: from, to: to, pairs: (to - from + 1) / 2, between: f.between, rows: rowsInside(g)}
 	s.plan, _ = fft.NewPlan[complex64](length) // FastLength is always a valid length
-	s.line, s.work = make([]complex64, length*s.pairs), make([]complex64, length*s.pairs)
+	s.block = (fewestLines + s.pairs - 1) / s.pairs
+	s.line, s.work = make([]complex64, length*s.block*s.pairs), make([]complex64, length*s.block*s.pairs)
 	s.stepMM = 1 / (sp.DeltaK * float64(length*f.between))
 	s.reach = min(int(math.Ceil(g.RadiusMM()/s.stepMM/float64(f.between)))+1, length/2-1)
 	for d := from; d < to; d++ {
@@ -127,6 +129,9 @@ func sinc(x float64) float64 {
 	return math.Sin(math.Pi*x) / (math.Pi * x)
 }
 
+// fewestLines is how many lines a transform should have at a time to be worth its loops.
+const fewestLines = 8
+
 // fixedPoint leaves a sixteenth of the range of an int32 for rounding.
 const fixedPoint = (1 << 31) * (15.0 / 16)
 
@@ -152,16 +157,26 @@ func (s *source) bound(d int) float64 {
 // entries returns how many table entries a projection has.
 func (s *source) entries() int { return 2*s.reach*s.between + 1 }
 
-// load puts the filtered spoke i into line and transforms it. Two delays a, b of real projections travel as a + ib: their
-// transforms at ±k are A ± and B with A(-k) = A*(k).
-func (s *source) load(i int) {
+// load puts the filtered spokes first, first+1, ... before end, a block of them at most, into line and transforms them. It
+// returns how many they were. Two delays a, b of real projections travel as a + ib: their transforms at ±k are A ± and B
+// with A(-k) = A*(k).
+func (s *source) load(first, end int) int {
 	clear(s.line)
-	length := s.plan.Len()
+	count := min(s.block, end-first)
+	for q := range count {
+		s.loadSpoke(first+q, s.line[q*s.pairs:])
+	}
+	s.plan.Inverse(s.line, s.work, s.block*s.pairs)
+	return count
+}
+
+func (s *source) loadSpoke(i int, line []complex64) {
+	length, stride := s.plan.Len(), s.block*s.pairs
 	for m := 0; m <= s.sp.Half; m++ {
 		weight := complex(float32(s.filter[m]*s.axis[i]*s.sp.DeltaK), 0)
 		row := s.sp.Row(i, m)[s.from:s.to]
-		up := s.line[m*s.pairs : (m+1)*s.pairs]
-		down := s.line[(length-m)%length*s.pairs:]
+		up := line[m*stride : m*stride+s.pairs]
+		down := line[(length-m)%length*stride:]
 		for l := range up {
 			a, b := row[2*l]*weight, complex64(0)
 			if 2*l+1 < len(row) {
@@ -171,13 +186,14 @@ func (s *source) load(i int) {
 			down[l] = complex(real(a)+imag(b), real(b)-imag(a))
 		}
 	}
-	s.plan.Inverse(s.line, s.work, s.pairs)
 }
 
-// at returns the transformed sample x of pair l of the loaded spoke, scaled to fixed point.
-func (s *source) at(x, l int) (first, second float64) {
-	length := s.plan.Len()
-	v := s.line[(x+length)%length*s.pairs+l]
+// at returns the transformed sample x of pair l of spoke q of the loaded block, scaled to fixed point.
+func (s *source) at(x, q, l int) (first, second float64) {
+	if x < 0 {
+		x += s.plan.Len()
+	}
+	v := s.line[(x*s.block+q)*s.pairs+l]
 	first = float64(real(v)) * s.scale[2*l]
 	if 2*l+1 < len(s.scale) {
 		second = float64(imag(v)) * s.scale[2*l+1]

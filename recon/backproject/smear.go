@@ -36,9 +36,12 @@ func smear[T bundle](s *source, add adder[T], progress func(float64)) []float32 
 	table := make([]T, chunk*entries)
 	for from := 0; from < shots; from += chunk {
 		to := min(from+chunk, shots)
-		for i := from; i < to; i++ {
-			s.load(i)
-			fill(s, table[(i-from)*entries:(i-from+1)*entries])
+		for i := from; i < to; {
+			count := s.load(i, to)
+			for q := range count {
+				fill(s, q, table[(i+q-from)*entries:(i+q-from+1)*entries])
+			}
+			i += count
 		}
 		// A chunk that is not a multiple of four ends with empty projections.
 		clear(table[(to-from)*entries : (to-from+3)/4*4*entries])
@@ -50,16 +53,16 @@ func smear[T bundle](s *source, add adder[T], progress func(float64)) []float32 
 	return finish(s, sum)
 }
 
-// fill writes the loaded spoke into its table: the transformed samples and the straight lines between them.
-func fill[T bundle](s *source, entries []T) {
+// fill writes spoke q of the loaded block into its table: the transformed samples and the straight lines between them.
+func fill[T bundle](s *source, q int, entries []T) {
 	for l := range s.pairs {
-		a, b := s.at(-s.reach, l)
+		a, b := s.at(-s.reach, q, l)
 		at := 0
 		for x := -s.reach + 1; x <= s.reach; x++ {
-			nextA, nextB := s.at(x, l)
+			nextA, nextB := s.at(x, q, l)
+			stepA, stepB := (nextA-a)/float64(s.between), (nextB-b)/float64(s.between)
 			for step := range s.between {
-				f := float64(step) / float64(s.between)
-				entries[at][l] = pack(a+f*(nextA-a), b+f*(nextB-b))
+				entries[at][l] = pack(a+float64(step)*stepA, b+float64(step)*stepB)
 				at++
 			}
 			a, b = nextA, nextB

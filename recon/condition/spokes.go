@@ -6,6 +6,7 @@ import (
 
 	"torrloom/recon/acquisition"
 	"torrloom/recon/fault"
+	"torrloom/recon/fft"
 )
 
 // Spokes are conditioned image shots: samples of k-space along unit vectors, at k = m·DeltaK, m = 0..Half.
@@ -48,6 +49,14 @@ func Plan(a *acquisition.Acquisition, c *Constants, fieldOfViewMM, kCut float64)
 	return Geometry{BandMM: math.Min(band, math.Max(a.AliasFreeMM(), fieldOfViewMM)), KCut: kCut}
 }
 
+// forProjections widens the band until 1/DeltaK is a number of samples, no fewer than a projection has, that transforms
+// fast.
+func (g Geometry) forProjections(a *acquisition.Acquisition) Geometry {
+	period := max(a.Samples, int(math.Ceil(2*g.BandMM/a.PositionStepMM*(1-1e-9))))
+	g.BandMM = float64(fft.FastLength(period)) * a.PositionStepMM / 2
+	return g
+}
+
 // Bytes returns the memory that the samples of delays delays will take.
 func (g Geometry) Bytes(a *acquisition.Acquisition, delays int) int64 {
 	return int64(len(a.ImageShots())) * int64(g.half()+1) * int64(delays) * 8
@@ -65,6 +74,9 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 	if !(g.BandMM > 0) || !(g.KCut > 0) {
 		return nil, fault.New(fault.BadSetting, "recipe reconstruction", "band %g mm and cutoff %g cycles/mm; both must be positive", g.BandMM, g.KCut)
 	}
+	if a.Domain == acquisition.Projection {
+		g = g.forProjections(a)
+	}
 	sp := newSpokes(a, s, g, delays)
 	rate, err := readoutRate(a, s)
 	if err != nil {
@@ -78,6 +90,11 @@ func Condition(a *acquisition.Acquisition, s Settings, c *Constants, g Geometry,
 		sp.rawSD = append(sp.rawSD, c.NoiseSD[d])
 	}
 	reader := newReader(a, s, c, sp)
+	if a.Domain == acquisition.Projection {
+		if err := reader.readyForProjections(a.TimeZeroSample + s.TimeShiftSamples); err != nil {
+			return nil, err
+		}
+	}
 	for i := range sp.Shot {
 		if err := reader.fill(i); err != nil {
 			return nil, err
@@ -92,11 +109,18 @@ func newSpokes(a *acquisition.Acquisition, s Settings, g Geometry, delays []int)
 	sp.OneSided = make([]int, len(sp.Shot))
 	sp.from = make([]*Resampler, len(sp.Shot))
 	sp.gain = make([][]float64, len(sp.Shot))
-	for _, s := range sp.Shot {
-		n, strength := a.GradientMTPerM[s], a.Strength(s)
-		sp.Directions = append(sp.Directions, [3]float64{n[0] / strength, n[1] / strength, n[2] / strength})
-	}
+	sp.Directions = Directions(a, sp.Shot)
 	return sp
+}
+
+// Directions returns the unit vectors of the gradients of some shots.
+func Directions(a *acquisition.Acquisition, shots []int) [][3]float64 {
+	out := make([][3]float64, len(shots))
+	for i, s := range shots {
+		n, strength := a.GradientMTPerM[s], a.Strength(s)
+		out[i] = [3]float64{n[0] / strength, n[1] / strength, n[2] / strength}
+	}
+	return out
 }
 
 // noiseDensity follows from one raw sample standing for dk (or, of a projection, for its step in position). Shots of
@@ -128,8 +152,12 @@ type reader struct {
 	dead       int
 	beta       float64
 	resamplers map[resamplerKey]*Resampler
-	waves      []complex128 // [m][sample] of a projection's transform
 	work       []complex64
+
+	// Of projections only:
+	plan          *fft.Plan[complex128]
+	line, scratch []complex128 // [position][delay]
+	shift         []complex128 // [m] puts the origin at time zero
 }
 
 type resamplerKey struct{ strength, zero int64 }
@@ -140,26 +168,11 @@ func newReader(a *acquisition.Acquisition, s Settings, c *Constants, sp *Spokes)
 	// Above four fifths of the alias-free field the band is narrowed to the object, to leave the interpolation room.
 	band := math.Min(sp.BandMM, math.Max(1.1*c.ExtentMM, 0.8*a.AliasFreeMM()))
 	r.beta = math.Min(1, band/a.AliasFreeMM())
-	if a.Domain == acquisition.Projection {
-		r.waves = projectionWaves(a, sp, a.TimeZeroSample+s.TimeShiftSamples)
-	}
 	return r
 }
 
-// projectionWaves returns step·exp(-i2π k_m x_j): a projection times this is its transform at k_m.
-func projectionWaves(a *acquisition.Acquisition, sp *Spokes, zero float64) []complex128 {
-	out := make([]complex128, 0, (sp.Half+1)*a.Samples)
-	for m := range sp.Half + 1 {
-		for j := range a.Samples {
-			x := (float64(j) - zero) * a.PositionStepMM
-			out = append(out, cmplx.Rect(a.PositionStepMM, -2*math.Pi*float64(m)*sp.DeltaK*x))
-		}
-	}
-	return out
-}
-
 func (r *reader) fill(i int) error {
-	if r.waves != nil {
+	if r.plan != nil {
 		r.fillFromProjection(i)
 		return nil
 	}
@@ -232,16 +245,38 @@ func (r *reader) resampler(shot int) (*Resampler, error) {
 	return rs, err
 }
 
+// fillFromProjection transforms the projections of one shot at all delays:
+//
+//	S(k_m) = step Σ_j p_j exp(-i2π k_m (j - zero)·step),   k_m = m/(n·step) for n the length of the transform
 func (r *reader) fillFromProjection(i int) {
 	r.sp.OneSided[i] = r.sp.Half + 1
+	delays := len(r.sp.Delays)
+	clear(r.line)
 	for d := range r.sp.Delays {
 		r.corrector.Load(r.work, r.sp.Delays[d], r.sp.Shot[i])
-		for m := range r.sp.Half + 1 {
-			var sum complex128
-			for j, w := range r.waves[m*r.a.Samples : (m+1)*r.a.Samples] {
-				sum += w * complex(float64(real(r.work[j])), 0)
-			}
-			r.sp.Row(i, m)[d] = complex64(sum)
+		for j, v := range r.work {
+			r.line[j*delays+d] = complex(float64(real(v)), 0)
 		}
 	}
+	r.plan.Forward(r.line, r.scratch, delays)
+	for m := range r.sp.Half + 1 {
+		for d, v := range r.line[m*delays : (m+1)*delays] {
+			r.sp.Row(i, m)[d] = complex64(v * r.shift[m])
+		}
+	}
+}
+
+// readyForProjections makes what fillFromProjection needs.
+func (r *reader) readyForProjections(zero float64) error {
+	n := int(math.Round(1 / (r.sp.DeltaK * r.a.PositionStepMM)))
+	plan, err := fft.NewPlan[complex128](n)
+	if err != nil {
+		return err
+	}
+	r.plan = plan
+	r.line, r.scratch = make([]complex128, n*len(r.sp.Delays)), make([]complex128, n*len(r.sp.Delays))
+	for m := range r.sp.Half + 1 {
+		r.shift = append(r.shift, cmplx.Rect(r.a.PositionStepMM, 2*math.Pi*float64(m)*zero/float64(n)))
+	}
+	return nil
 }

@@ -12,6 +12,7 @@ type Trajectory struct {
 	Directions [][3]float64 // [shot]
 	DeltaK     float64      // cycles/mm
 	Half       int
+	Axis       []float64 // [shot] as AxisWeights returns; nil to have them made
 }
 
 // Density is one way to weigh the samples of a trajectory. Weights returns [shot][m], m = 0..Half, such that
@@ -66,6 +67,14 @@ func ApplyWindow(weights, window []float64) {
 	}
 }
 
+// axisWeights returns Axis, or makes it.
+func (t Trajectory) axisWeights() ([]float64, error) {
+	if t.Axis != nil {
+		return t.Axis, nil
+	}
+	return AxisWeights(t.Dim, t.Directions)
+}
+
 // along returns axis weights times a profile along the spoke, [shot][m].
 func (t Trajectory) along(axis, profile []float64) []float64 {
 	out := make([]float64, 0, len(axis)*len(profile))
@@ -87,7 +96,7 @@ func rampProfile(t Trajectory) []float64 {
 }
 
 func solidAngleDensity(t Trajectory) ([]float64, error) {
-	axis, err := AxisWeights(t.Dim, t.Directions)
+	axis, err := t.axisWeights()
 	if err != nil {
 		return nil, err
 	}
@@ -95,7 +104,7 @@ func solidAngleDensity(t Trajectory) ([]float64, error) {
 }
 
 func cellVolumeDensity(t Trajectory) ([]float64, error) {
-	axis, err := AxisWeights(t.Dim, t.Directions)
+	axis, err := t.axisWeights()
 	if err != nil {
 		return nil, err
 	}
@@ -138,7 +147,7 @@ const (
 // Source: Pipe & Menon, Sampling density compensation in MRI: rationale and an iterative numerical solution, Magn. Reson.
 // Med. 41 (1999) 179.
 func iterativeDensity(t Trajectory) ([]float64, error) {
-	if _, err := AxisWeights(t.Dim, t.Directions); err != nil { // the same demands on the directions
+	if _, err := t.axisWeights(); err != nil { // the same demands on the directions
 		return nil, err
 	}
 	axes, member := distinctAxes(t.Directions)

@@ -22,10 +22,10 @@ func trajectories() map[string]Trajectory {
 		}
 	}
 	return map[string]Trajectory{
-		"even angles":   {2, angles(120, func(u float64) float64 { return u }), 0.02, 40},
-		"uneven angles": {2, angles(160, func(u float64) float64 { return u + 0.1*math.Sin(2*math.Pi*u) }), 0.02, 40},
-		"half sphere":   {3, goldenHalfSphere(600), 0.025, 24},
-		"gap of spokes": {3, gap, 0.025, 24},
+		"even angles":   {Dim: 2, Directions: angles(120, func(u float64) float64 { return u }), DeltaK: 0.02, Half: 40},
+		"uneven angles": {Dim: 2, Directions: angles(160, func(u float64) float64 { return u + 0.1*math.Sin(2*math.Pi*u) }), DeltaK: 0.02, Half: 40},
+		"half sphere":   {Dim: 3, Directions: goldenHalfSphere(600), DeltaK: 0.025, Half: 24},
+		"gap of spokes": {Dim: 3, Directions: gap, DeltaK: 0.025, Half: 24},
 	}
 }
 
@@ -186,7 +186,7 @@ func TestIterationEvensOutTheDensityOfDirections(t *testing.T) {
 }
 
 func TestIterationSharesARepeatedAxis(t *testing.T) {
-	tr := Trajectory{3, goldenHalfSphere(80), 0.03, 4}
+	tr := Trajectory{Dim: 3, Directions: goldenHalfSphere(80), DeltaK: 0.03, Half: 4}
 	alone := weigh(t, Densities[2], tr)
 	n := tr.Directions[17]
 	tr.Directions = append(tr.Directions, [3]float64{-n[0], -n[1], -n[2]})
@@ -207,7 +207,7 @@ func TestUnknownAndImpossibleDensitiesAreRefused(t *testing.T) {
 		if got, err := DensityNamed(d.Name); err != nil || got.Label != d.Label {
 			t.Errorf("%s: found %q, %v", d.Name, got.Label, err)
 		}
-		if _, err := d.Weights(Trajectory{3, [][3]float64{{1, 0, 0}, {0, 1, 0}}, 0.02, 8}); err == nil {
+		if _, err := d.Weights(Trajectory{Dim: 3, Directions: [][3]float64{{1, 0, 0}, {0, 1, 0}}, DeltaK: 0.02, Half: 8}); err == nil {
 			t.Errorf("%s: two axes in 3D were weighed", d.Name)
 		}
 	}

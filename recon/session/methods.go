@@ -4,6 +4,7 @@ import (
 	"torrloom/recon/acquisition"
 	"torrloom/recon/backproject"
 	"torrloom/recon/condition"
+	"torrloom/recon/fault"
 	"torrloom/recon/gridding"
 	"torrloom/recon/leastsquares"
 	"torrloom/recon/recipe"
@@ -19,6 +20,7 @@ type spokeJob struct {
 	sp       *condition.Spokes
 	g        volume.Grid
 	r        recipe.Reconstruction
+	axis     []float64 // [shot] share of directions
 	window   []float64 // [m]
 	noise    func(realisations int) (*condition.Spokes, error)
 	progress func(float64)
@@ -32,15 +34,11 @@ var spokeMethods = map[string]func(j spokeJob) (*Images, error){
 }
 
 func backProjected(j spokeJob) (*Images, error) {
-	axis, err := sampling.AxisWeights(j.sp.Dim, j.sp.Directions)
-	if err != nil {
-		return nil, err
-	}
 	filter := sampling.Ramp(j.sp.Dim, j.sp.Half, j.sp.DeltaK)
 	for m, w := range j.window {
 		filter[m] *= w
 	}
-	return &Images{Values: backproject.Images(j.sp, j.g, axis, filter, j.progress), NoiseSD: j.sp.NoiseSD(axis, filter)}, nil
+	return &Images{Values: backproject.Images(j.sp, j.g, j.axis, filter, j.progress), NoiseSD: j.sp.NoiseSD(j.axis, filter)}, nil
 }
 
 func gridded(j spokeJob) (*Images, error) {
@@ -88,7 +86,7 @@ func (j spokeJob) weights() ([]float64, error) {
 	if err != nil {
 		return nil, err
 	}
-	weights, err := d.Weights(sampling.Trajectory{Dim: j.sp.Dim, Directions: j.sp.Directions, DeltaK: j.sp.DeltaK, Half: j.sp.Half})
+	weights, err := d.Weights(sampling.Trajectory{Dim: j.sp.Dim, Directions: j.sp.Directions, DeltaK: j.sp.DeltaK, Half: j.sp.Half, Axis: j.axis})
 	if err != nil {
 		return nil, err
 	}
@@ -97,20 +95,23 @@ func (j spokeJob) weights() ([]float64, error) {
 }
 
 // spokeImages conditions the spokes of some delays and makes their images.
-func spokeImages(a *acquisition.Acquisition, r recipe.Recipe, c *condition.Constants, g volume.Grid, delays []int, progress func(float64)) (*Images, error) {
+func spokeImages(a *acquisition.Acquisition, r recipe.Recipe, c *Constants, g volume.Grid, delays []int, progress func(float64)) (*Images, error) {
 	cut, _ := kCut(a, r)
-	geometry := condition.Plan(a, c, r.Reconstruction.FieldOfViewMM, cut)
-	sp, err := condition.Condition(a, r.Conditioning, c, geometry, delays)
+	geometry := condition.Plan(a, c.Spokes, r.Reconstruction.FieldOfViewMM, cut)
+	sp, err := condition.Condition(a, r.Conditioning, c.Spokes, geometry, delays)
 	if err != nil {
 		return nil, err
+	}
+	if len(c.Axis) != len(sp.Shot) {
+		return nil, fault.New(fault.Bug, "reconstruct", "%d axis weights for %d shots", len(c.Axis), len(sp.Shot))
 	}
 	w, err := sampling.WindowNamed(r.Reconstruction.Window)
 	if err != nil {
 		return nil, err
 	}
-	j := spokeJob{sp: sp, g: g, r: r.Reconstruction, window: w.Sample(sp.Half, sp.DeltaK, cut), progress: progress}
+	j := spokeJob{sp: sp, g: g, r: r.Reconstruction, axis: c.Axis, window: w.Sample(sp.Half, sp.DeltaK, cut), progress: progress}
 	j.noise = func(realisations int) (*condition.Spokes, error) {
-		return leastsquares.Noise(a, r.Conditioning, c, geometry, realisations)
+		return leastsquares.Noise(a, r.Conditioning, c.Spokes, geometry, realisations)
 	}
 	return spokeMethods[r.Reconstruction.Method](j)
 }

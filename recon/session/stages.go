@@ -10,6 +10,7 @@ import (
 	"torrloom/recon/leastsquares"
 	"torrloom/recon/recipe"
 	"torrloom/recon/relax"
+	"torrloom/recon/sampling"
 	"torrloom/recon/singlepoint"
 	"torrloom/recon/volume"
 )
@@ -18,6 +19,7 @@ import (
 // there, as the encoding asks.
 type Constants struct {
 	Spokes      *condition.Constants `json:",omitempty"`
+	Axis        []float64            `json:",omitempty"` // [kept shot] share of directions, see sampling.AxisWeights
 	SinglePoint *singlepoint.Plan    `json:",omitempty"`
 }
 
@@ -26,8 +28,7 @@ type Constants struct {
 // Errors: those of FramesOf, condition.Measure and singlepoint.Prepare.
 func Measure(a *acquisition.Acquisition, r recipe.Recipe) (*Constants, []string, error) {
 	if a.Encoding != acquisition.SinglePoint {
-		c, warnings, err := condition.Measure(a, r.Conditioning)
-		return &Constants{Spokes: c}, warnings, err
+		return measureSpokes(a, r)
 	}
 	f, err := FramesOf(a, r)
 	if err != nil {
@@ -39,6 +40,15 @@ func Measure(a *acquisition.Acquisition, r recipe.Recipe) (*Constants, []string,
 	}
 	p, warnings, err := singlepoint.Prepare(a, singlePointSettings(r), g, f.samples)
 	return &Constants{SinglePoint: p}, warnings, err
+}
+
+func measureSpokes(a *acquisition.Acquisition, r recipe.Recipe) (*Constants, []string, error) {
+	c, warnings, err := condition.Measure(a, r.Conditioning)
+	if err != nil {
+		return nil, nil, err
+	}
+	axis, err := sampling.AxisWeights(a.Dim, condition.Directions(a, r.Conditioning.KeptShots(a)))
+	return &Constants{Spokes: c, Axis: axis}, warnings, err
 }
 
 func gridOf(a *acquisition.Acquisition, r recipe.Recipe) (volume.Grid, error) {
@@ -85,7 +95,7 @@ func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *Constants, fram
 		}
 		return &Images{Values: images.Values, NoiseSD: images.NoiseSD}, nil
 	case a.Encoding == acquisition.Spoke && c.Spokes != nil:
-		return spokeImages(a, r, c.Spokes, g, f.delaysOf(frames), progress)
+		return spokeImages(a, r, c, g, f.delaysOf(frames), progress)
 	}
 	return nil, fault.New(fault.Bug, "reconstruct", "the constants are not those of %s data", a.Encoding)
 }
