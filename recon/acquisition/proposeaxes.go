@@ -217,7 +217,7 @@ func (p *proposer) alongTrace() {
 			p.add(s, i)
 		}
 		zero := -first / step
-		if !slices.ContainsFunc(p.arrays, func(b Array) bool { return b.Name == "time_zero_sample" }) && zero >= 0 && zero < float64(p.samples) {
+		if !slices.ContainsFunc(p.arrays, func(b Array) bool { return b.Name == "time_zero_sample" }) {
 			p.add(FieldSource{Field: "time_zero_sample", Arrays: []string{p.labels[i]}, Take: Zero, Unit: "points", Guessed: true,
 				Reason: fmt.Sprintf("%s is zero at sample %.6g", quoted(a.Name), zero)}, i)
 		}

@@ -9,7 +9,7 @@ import (
 // Truncation says that a file ended within an array, whose complete entries along one axis were kept.
 type Truncation struct {
 	Axis   int `json:"axis"`   // of the array's shape
-	Stated int `json:"stated"` // entries that the file states along it; the shape holds those that are complete
+	Stated int `json:"stated"` // entries that the file states along it, 0 when it does not; the shape holds those that are complete
 }
 
 // axisCut is a truncation of the signal by what its axis counts.
@@ -44,12 +44,16 @@ func shorten(members map[string]Array, cut axisCut) []string {
 		for at < len(a.Shape)-1 && a.Shape[at] == 1 && a.Len() > 1 && name != "gradient_mT_per_m" {
 			at++ // a MATLAB list is [1, n]
 		}
-		if len(a.Shape) == 0 || a.Shape[at] != cut.stated || cut.have >= cut.stated {
+		if len(a.Shape) == 0 || a.Shape[at] <= cut.have || cut.stated != 0 && a.Shape[at] != cut.stated {
 			continue
 		}
 		members[name] = firstRows(a, at, cut.have)
 	}
-	return []string{fmt.Sprintf("the file was cut short: %d complete %ss of %d are used; maps and figures lack the rest", cut.have, cut.word, cut.stated)}
+	of := fmt.Sprint(cut.stated)
+	if cut.stated == 0 {
+		of = "a number that is not known"
+	}
+	return []string{fmt.Sprintf("the file was cut short: %d complete %ss of %s are used; maps and figures lack the rest", cut.have, cut.word, of)}
 }
 
 // firstRows returns the first n entries along an axis before which there are only axes of length 1.

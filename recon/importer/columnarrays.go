@@ -137,7 +137,7 @@ func (t *table) arrays(file string) ([]acquisition.Array, error) {
 	}
 	if t.guess != "" {
 		for i := range out {
-			out[i].Attributes = map[string]string{"guess": joinSentences(out[i].Attributes["guess"], t.guess)}
+			out[i].Attributes = mergeAttributes(out[i].Attributes, map[string]string{"guess": joinSentences(out[i].Attributes["guess"], t.guess)})
 		}
 	}
 	return out, nil
@@ -362,10 +362,14 @@ func (t *table) stated(columns []acquisition.Array) ([]acquisition.Array, error)
 		if unit != "" {
 			array.Unit = unit
 		}
+		array.Attributes = map[string]string{statedAttribute: fmt.Sprintf("line %d", comment.number)}
 		out = append(out, array)
 	}
 	return out, nil
 }
+
+// statedAttribute marks an array that a comment states, with its line.
+const statedAttribute = "stated in a comment"
 
 // valueOf returns a value written as text: a number, a number with its unit ("4 ns"), numbers with commas, semicolons or
 // spaces between, in any brackets; else the text.

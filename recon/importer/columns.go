@@ -26,6 +26,7 @@ var columns = Format{
 	Read: func(name string, data []byte, limits Limits) ([]acquisition.Array, error) {
 		return ReadColumns(limits, name, data, Dialect{})
 	},
+	Salvage: salvageColumns,
 }
 
 // Dialect says how a table of text is written. The zero value is told from the text.
@@ -189,6 +190,8 @@ type trial struct {
 	fields  int
 	numeric int // columns of numbers
 	header  int // lines before the first row
+	rows    int
+	misfits int // rows of another number of fields, or with text in a column of numbers
 	first   []float64
 }
 
@@ -244,7 +247,7 @@ func (t *table) noTable(sample []textLine) error {
 	return fault.New(fault.BadFile, fmt.Sprintf("line %d", sample[0].number), "no column of numbers was found; use one delimiter and one decimal mark throughout")
 }
 
-// try reads the sample in one dialect. It fits when all lines behind the names have as many fields, some of them numbers.
+// try reads the sample in one dialect. It fits when the lines behind the names have as many fields, some of them numbers.
 func try(d Dialect, sample []textLine) (trial, bool) {
 	if len(sample) == 0 {
 		return trial{}, false
@@ -265,26 +268,50 @@ func try(d Dialect, sample []textLine) (trial, bool) {
 		return one, false
 	}
 	one.header = headerRows(d, rows, kinds)
-	for i, row := range rows[one.header:] {
-		last := one.header+i == len(sample)-1
-		if !fits(row, n) && !(last && i > 0) { // a cut last line is told apart later
-			return one, false
-		}
-		for c := range min(n, len(row)) {
-			v, _, ok := parseNumber(row[c], d.Decimal)
-			if kinds[c] == ofNumbers && !ok && !last {
-				return one, false
-			}
-			one.first = append(one.first, v)
-		}
+	one.rows = len(rows) - one.header
+	for _, row := range rows[one.header:] {
+		one.misfits += count(!one.takes(row, kinds))
 	}
-	return one, len(rows) > one.header
+	// A few lines that do not fit are named when the table is read; of many, this is no table.
+	const most = 4                                                                                 // of so many rows, one
+	return one, one.rows > 0 && most*one.misfits <= one.rows && (one.rows > 1 || one.numeric == n) // a single line may be prose
 }
 
-// width returns the number of columns: that of the middle row, which is neither names nor cut, without the empty field
-// behind a delimiter that ends every row.
+// takes tells whether a row fits, and remembers its numbers.
+func (a *trial) takes(row [][]byte, kinds []columnKind) bool {
+	if !fits(row, a.fields) {
+		return false
+	}
+	for c, kind := range kinds {
+		v, _, ok := parseNumber(row[c], a.dialect.Decimal)
+		if kind == ofNumbers && !ok {
+			return false
+		}
+		a.first = append(a.first, v)
+	}
+	return true
+}
+
+func count(yes bool) int {
+	if yes {
+		return 1
+	}
+	return 0
+}
+
+// width returns the number of columns: that of most rows, the greatest of equals, without the empty field behind a
+// delimiter that ends every row.
 func width(rows [][][]byte) int {
-	n := len(rows[len(rows)/2])
+	times := map[int]int{}
+	n := 0
+	for _, row := range rows {
+		times[len(row)]++
+	}
+	for length, k := range times {
+		if k > times[n] || k == times[n] && length > n {
+			n = length
+		}
+	}
 	ends := n > 1
 	for _, row := range rows {
 		ends = ends && (len(row) != n || len(row[n-1]) == 0)
@@ -300,10 +327,11 @@ func fits(row [][]byte, n int) bool {
 	return len(row) == n || len(row) == n+1 && len(row[n]) == 0
 }
 
-// better tells whether a fits clearly better: all of its columns are numbers, or more of them.
-func (a trial) better(b trial) bool {
-	left, right := a.numeric*b.fields, b.numeric*a.fields
-	return left > right
+// better tells whether a fits better: more of its columns are numbers, in more of the rows.
+func (a trial) better(b trial) bool { return a.share() > b.share() }
+
+func (a trial) share() float64 {
+	return float64(a.numeric) / float64(a.fields) * float64(a.rows-a.misfits) / float64(a.rows)
 }
 
 // thousands returns a warning when every decimal comma could part thousands.
@@ -353,7 +381,7 @@ func kindsOf(d Dialect, rows [][][]byte, n int) []columnKind {
 func headerRows(d Dialect, rows [][][]byte, kinds []columnKind) int {
 	const most = 3
 	for i, row := range rows[:min(most, len(rows)-1)] {
-		names := len(row) != len(kinds) && i == 0
+		names := !fits(row, len(kinds)) && i == 0
 		for c, kind := range kinds {
 			if c < len(row) && kind == ofNumbers {
 				_, _, ok := parseNumber(row[c], d.Decimal)

@@ -28,6 +28,10 @@ type Format struct {
 	// one unnamed array names it after the file.
 	Read func(name string, data []byte, limits Limits) ([]acquisition.Array, error)
 
+	// Salvage returns what is complete of a file that is cut short, the last array perhaps with Truncated set; nil when a
+	// cut file of this format is of no use.
+	Salvage func(name string, data []byte, limits Limits) ([]acquisition.Array, error)
+
 	// Unpack stands in the place of Read when the format holds other files: it returns them.
 	Unpack func(name string, data []byte, limits Limits) ([]File, error)
 }

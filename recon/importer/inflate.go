@@ -4,7 +4,6 @@ import (
 	"bytes"
 	"compress/gzip"
 	"compress/zlib"
-	"encoding/binary"
 	"errors"
 	"fmt"
 	"io"
@@ -64,6 +63,13 @@ func (m *matFile) inflate(e matElement) (matElement, error) {
 		return matElement{}, err
 	}
 	data, err := readExactly(from, n, int64(len(e.data)))
+	inner := matElement{m.order.Uint32(tag[:4]), data, place{e.at.String() + " unpacked ", len(tag)}, err != nil}
+	if inner.kind == miCOMPRESSED {
+		return matElement{}, fault.New(fault.BadFile, e.at.String(), "a compressed variable within a compressed variable")
+	}
+	if err != nil && m.salvage && e.cut {
+		return inner, nil
+	}
 	if err != nil {
 		return matElement{}, notInflated(e, err)
 	}
@@ -71,10 +77,6 @@ func (m *matFile) inflate(e matElement) (matElement, error) {
 	if extra, err := from.Read(tag[:1]); extra != 0 || !errors.Is(err, io.EOF) || packed.Len() != 0 {
 		return matElement{}, fault.New(fault.BadFile, e.at.String(),
 			"a compressed variable unpacks to something else than the %d bytes stated (%v); the file may be damaged", n, err)
-	}
-	inner := matElement{binary.ByteOrder(m.order).Uint32(tag[:4]), data, place{e.at.String() + " unpacked ", len(tag)}}
-	if inner.kind == miCOMPRESSED {
-		return matElement{}, fault.New(fault.BadFile, e.at.String(), "a compressed variable within a compressed variable")
 	}
 	return inner, nil
 }
@@ -88,8 +90,8 @@ func readExactly(from io.Reader, n, packed int64) ([]byte, error) {
 	const likely = 8 // measured traces pack to half, whole numbers to an eighth
 	if n <= likely*packed {
 		data := make([]byte, n)
-		_, err := io.ReadFull(from, data)
-		return data, err
+		got, err := io.ReadFull(from, data)
+		return data[:got], err
 	}
 	var out bytes.Buffer
 	got, err := io.CopyN(&out, from, n)

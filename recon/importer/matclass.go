@@ -108,7 +108,9 @@ func (m *matFile) keep(a acquisition.Array, err error) error {
 	if err == nil && len(m.arrays) >= m.limits.Arrays {
 		err = fault.New(fault.TooLarge, "", "more than %d arrays; save them in fewer, larger ones", m.limits.Arrays)
 	}
-	m.arrays = append(m.arrays, a)
+	if err == nil {
+		m.arrays = append(m.arrays, a)
+	}
 	return err
 }
 
@@ -186,6 +188,9 @@ func (m *matFile) numbers(p *parts, h matArray) error {
 		return p.err
 	}
 	n := elements(h.shape)
+	if re.cut || im.cut {
+		return m.cutNumbers(p.name, h, class, re, im)
+	}
 	for _, e := range []matElement{re, im} {
 		if size := matNumber[e.kind].Size; e.kind != 0 && len(e.data) != n*size {
 			return fault.New(fault.BadFile, e.at.within(p.name), "%d bytes for shape %s, which takes %d of %d bytes",
@@ -204,6 +209,28 @@ func (m *matFile) numbers(p *parts, h matArray) error {
 		return m.keep(acquisition.NewArray(p.name, h.shape, class, re.data))
 	}
 	return m.converted(p.name, h.shape, class, re)
+}
+
+// cutNumbers keeps the complete entries of an array within which the file ends.
+func (m *matFile) cutNumbers(name string, h matArray, class acquisition.Layout, re, im matElement) error {
+	whole := &matFile{order: m.order, limits: m.limits, bytes: m.bytes}
+	have := len(re.data) / matNumber[re.kind].Size
+	var err error
+	if h.complex {
+		have = min(have, len(im.data)/matNumber[im.kind].Size)
+		re.data, im.data = re.data[:have*matNumber[re.kind].Size], im.data[:have*matNumber[im.kind].Size]
+		err = whole.complexNumbers("", []int{have}, class, re, im)
+	} else {
+		re.data = re.data[:have*matNumber[re.kind].Size]
+		err = whole.converted("", []int{have}, class, re)
+	}
+	if err != nil {
+		return fault.Within(name, err)
+	}
+	found := whole.arrays[0]
+	layout := found.Layout()
+	layout.FirstAxisFastest = true
+	return m.keep(acquisition.CutArray(name, h.shape, layout, found.Raw()))
 }
 
 var matNumberTypes = []uint32{miINT8, miUINT8, miINT16, miUINT16, miINT32, miUINT32, miSINGLE, miDOUBLE, miINT64, miUINT64}

@@ -27,6 +27,7 @@ var matLevel5 = Format{
 		}
 		return acquisition.Gather(arrays), nil
 	},
+	Salvage: salvageMAT,
 }
 
 const matHeaderBytes = 128
@@ -65,6 +66,7 @@ type matFile struct {
 	limits   Limits
 	bytes    int64 // of the whole file
 	unpacked int64 // bytes inflated and made so far
+	salvage  bool  // elements that end too early are handed over as far as they go
 	arrays   []acquisition.Array
 }
 
@@ -73,6 +75,7 @@ type matElement struct {
 	kind uint32
 	data []byte
 	at   place
+	cut  bool // the file ended within it
 }
 
 // place says where some bytes stand: a byte of the file, or of an unpacked variable in it.
@@ -95,21 +98,26 @@ func joinWords(a, b string) string {
 
 // walkMAT returns every variable, structs and cells taken apart.
 func walkMAT(data []byte, limits Limits) ([]acquisition.Array, error) {
+	return (&matFile{limits: limits}).walk(data)
+}
+
+// walk returns what stands before a fault too.
+func (m *matFile) walk(data []byte) ([]acquisition.Array, error) {
 	if len(data) < matHeaderBytes {
 		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)), "ends within the header of %d bytes; the file may be cut short", matHeaderBytes)
 	}
-	m := &matFile{order: binary.LittleEndian, limits: limits, bytes: int64(len(data))}
+	m.order, m.bytes = binary.LittleEndian, int64(len(data))
 	if string(data[126:128]) == "MI" {
 		m.order = binary.BigEndian
 	}
 	// Objects of newer classes leave their parts in a variable without a name, which the header points to.
-	subsystem := int(m.order.Uint64(data[116:124]))
+	subsystem := m.order.Uint64(data[116:124])
 	for at := matHeaderBytes; at < len(data); {
 		element, next, err := m.element(data, at, place{}, false)
 		if err != nil {
 			return m.arrays, err
 		}
-		if at != subsystem {
+		if uint64(at) != subsystem {
 			if err := m.variable(element); err != nil {
 				return m.arrays, err
 			}
@@ -148,9 +156,12 @@ func (m *matFile) element(data []byte, at int, from place, padded bool) (matElem
 		if small > 4 {
 			return matElement{}, 0, fault.New(fault.BadFile, where.String(), "a small element states %d bytes, it holds 4 at most", small)
 		}
-		return matElement{kind & 0xffff, data[at+4 : at+4+int(small)], where.plus(4)}, start, nil
+		return matElement{kind & 0xffff, data[at+4 : at+4+int(small)], where.plus(4), false}, start, nil
 	}
 	if n > int64(len(data)-start) {
+		if m.salvage {
+			return matElement{kind, data[start:], where.plus(tag), true}, len(data), nil
+		}
 		return matElement{}, 0, fault.New(fault.BadFile, where.String(), "an element of %d bytes, %d are left; the file may be cut short", n, len(data)-start)
 	}
 	end := start + int(n)
@@ -158,7 +169,7 @@ func (m *matFile) element(data []byte, at int, from place, padded bool) (matElem
 	if padded {
 		next = min(len(data), start+(int(n)+7)/8*8)
 	}
-	return matElement{kind, data[start:end], where.plus(tag)}, next, nil
+	return matElement{kind, data[start:end], where.plus(tag), false}, next, nil
 }
 
 // spend returns a fault when n more bytes of memory pass what the file's own bytes justify.

@@ -23,32 +23,39 @@ var numpyArray = Format{
 		array.AfterFile = true
 		return []acquisition.Array{array}, err
 	},
+	Salvage: salvageNPY,
 }
 
 var npyMagic = []byte("\x93NUMPY")
 
 // parseNPY returns the array of one NPY file, without a name. It keeps data.
 func parseNPY(data []byte, limits Limits) (acquisition.Array, error) {
-	text, body, err := npyHeader(data, limits)
+	header, layout, body, err := npyParts(data, limits)
 	if err != nil {
-		return acquisition.Array{}, err
-	}
-	header, err := parseHeader(text)
-	if err != nil {
-		return acquisition.Array{}, err
-	}
-	layout, err := parseDescr(header.descr)
-	if err != nil {
-		return acquisition.Array{}, err
-	}
-	layout.FirstAxisFastest = header.fortran
-	if err := limits.checkShape(header.shape); err != nil {
 		return acquisition.Array{}, err
 	}
 	if err := checkBody(header, layout, len(data)-len(body), len(body)); err != nil {
 		return acquisition.Array{}, err
 	}
 	return acquisition.NewArray("", header.shape, layout, body)
+}
+
+// npyParts returns what the header states, within the limits, and the bytes behind it.
+func npyParts(data []byte, limits Limits) (npyText, acquisition.Layout, []byte, error) {
+	text, body, err := npyHeader(data, limits)
+	if err != nil {
+		return npyText{}, acquisition.Layout{}, nil, err
+	}
+	header, err := parseHeader(text)
+	if err != nil {
+		return npyText{}, acquisition.Layout{}, nil, err
+	}
+	layout, err := parseDescr(header.descr)
+	if err != nil {
+		return npyText{}, acquisition.Layout{}, nil, err
+	}
+	layout.FirstAxisFastest = header.fortran
+	return header, layout, body, limits.checkShape(header.shape)
 }
 
 // npyHeader returns the text of the header and the bytes behind it.

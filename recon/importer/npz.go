@@ -20,7 +20,8 @@ var numpyArchive = Format{
 	Recognise: func(head []byte) bool {
 		return bytes.HasPrefix(head, []byte(zipEnd)) || strings.HasSuffix(firstMember(head), ".npy")
 	},
-	Read: readNPZ,
+	Read:    readNPZ,
+	Salvage: salvageNPZ,
 }
 
 // zipArchive is a ZIP archive of files of the other formats.
