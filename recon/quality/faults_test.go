@@ -89,6 +89,27 @@ func withSettings(change func(a *acquisition.Acquisition, s *condition.Settings,
 	}
 }
 
+// unsteady gives every shot a frequency of its own, up to kHz off.
+func unsteady(a *acquisition.Acquisition, kHz float64) {
+	for s := range a.Shots {
+		for d := range a.Delays {
+			one := phantom.Clone(&acquisition.Acquisition{Signal: a.Trace(d, s), Delays: 1, Shots: 1, Samples: a.Samples, DwellNS: a.DwellNS, TimeZeroSample: a.TimeZeroSample})
+			phantom.DriftFrequency(one, kHz*math.Sin(float64(s)*2.4), 0)
+			copy(a.Trace(d, s), one.Signal)
+		}
+	}
+}
+
+// shuffledDemo is the demo, which looks nearly the same from everywhere, with its gradients dealt out at random.
+func shuffledDemo(t *testing.T) (*acquisition.Acquisition, condition.Settings, Known) {
+	a, err := phantom.DemoAcquisition(true)
+	if err != nil {
+		t.Fatal(err)
+	}
+	phantom.ShuffleGradients(a, 7)
+	return a, condition.Defaults(), Known{}
+}
+
 var nan = math.NaN()
 
 var faults = []spoilt{
@@ -127,15 +148,8 @@ var faults = []spoilt{
 			phantom.Weaken(a, s, 1+0.085*math.Sin(float64(s)*2.4)) // SD 6 %
 		}
 	})},
-	{name: "an unsteady frequency", check: "first-moment", level: Doubt, value: nan, plant: planted(func(a *acquisition.Acquisition) {
-		for s := range a.Shots {
-			for d := range a.Delays {
-				wobble := phantom.Clone(&acquisition.Acquisition{Signal: a.Trace(d, s), Delays: 1, Shots: 1, Samples: a.Samples, DwellNS: a.DwellNS, TimeZeroSample: a.TimeZeroSample})
-				phantom.DriftFrequency(wobble, 400*math.Sin(float64(s)*2.4), 0)
-				copy(a.Trace(d, s), wobble.Signal)
-			}
-		}
-	})},
+	{name: "an unsteady frequency", check: "first-moment", level: Doubt, value: nan, plant: planted(func(a *acquisition.Acquisition) { unsteady(a, 200) })},
+	{name: "a very unsteady frequency", check: "first-moment", level: Stop, value: nan, plant: planted(func(a *acquisition.Acquisition) { unsteady(a, 400) })},
 	{name: "a frequency offset", check: "frequency-offset", level: Doubt, value: 80, within: 4, plant: planted(func(a *acquisition.Acquisition) { phantom.DriftFrequency(a, 80, 80) })},
 	{name: "a frequency drift with zero-gradient shots", check: "frequency-drift", level: Doubt, value: 90, within: 4.5, plant: planted(func(a *acquisition.Acquisition) { phantom.DriftFrequency(a, 0, 90) })},
 	{name: "a frequency drift without zero-gradient shots", check: "frequency-drift", level: Doubt, value: 90, within: 4.5, plant: func(t *testing.T) (*acquisition.Acquisition, condition.Settings, Known) {
@@ -190,7 +204,14 @@ var faults = []spoilt{
 		tr := 6.0
 		a.Optional.RepetitionUS = &tr
 	})},
-	{name: "half an echo", check: "echo-halves", level: Fine, value: 8, within: 2, plant: measured(func(pr *phantom.Protocol) { pr.Samples, pr.TimeZeroSample = 130, 9.4 })},
+	{name: "a time zero far from the echo", check: "echo-place", level: Stop, value: 120, within: 12, plant: planted(func(a *acquisition.Acquisition) { a.TimeZeroSample -= 20 })},
+	{name: "half an echo with a time zero too early", check: "echo-place", level: Stop, value: 60, within: 12, plant: func(t *testing.T) (*acquisition.Acquisition, condition.Settings, Known) {
+		a, s, k := measured(func(pr *phantom.Protocol) { pr.Samples, pr.TimeZeroSample = 130, 14.4 })(t)
+		a.TimeZeroSample -= 10
+		return a, s, k
+	}},
+	{name: "shuffled gradients of a nearly round object", check: "gradient-order", level: Stop, value: nan, plant: shuffledDemo},
+	{name: "shuffled gradients as the centres show them", check: "first-moment", level: Stop, value: nan, plant: shuffledDemo},
 }
 
 func TestEveryCheckFindsItsFault(t *testing.T) {

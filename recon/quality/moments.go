@@ -13,7 +13,7 @@ var momentChecks = []Check{
 		Source: "Helgason-Ludwig consistency, order 0: Ludwig, Comm. Pure Appl. Math. 19 (1966) 49",
 		Advice: "look for an unsteady pulse or resonator; the image has streaks of about this size", Run: zerothMoment},
 	{Name: "first-moment", Label: "centre of the projections", Needs: []Need{spokes},
-		Rule:   "the centre of every projection is c·n for one point c, within a fifth of the nominal resolution or three times what noise does",
+		Rule:   "the centre of every projection is c·n for one point c, within a fifth of the nominal resolution or three times what noise does; a stop past a quarter and twenty times",
 		Source: "Helgason-Ludwig consistency, order 1: Ludwig, Comm. Pure Appl. Math. 19 (1966) 49",
 		Advice: "look for a frequency that wanders, wrong gradients or an object that moved", Run: firstMoment},
 	{Name: "frequency-offset", Label: "frequency offset", Needs: []Need{spokes, traces},
@@ -167,6 +167,10 @@ func laggedProduct(traces [][]complex64, lag int) polar {
 	return polar{math.Hypot(re, im), math.Atan2(im, re)}
 }
 
+// hopelessTimes is how many times the noise the centres miss one point by, and a quarter of the resolution with it, before
+// the projections are not those of one object along the stated gradients.
+const hopelessTimes = 20
+
 func firstMoment(s *Subject) []Finding {
 	p, at := s.place(), s.sound()
 	scatter, noise := spread(p.misfit), median(pick(s.centreSE, at))
@@ -179,6 +183,9 @@ func firstMoment(s *Subject) []Finding {
 	}
 	f := doubtIf(scatter > limit || len(bad) > 0, scatter, "mm", "the object's centre lies at (%.2f, %.2f, %.2f) mm; single projections miss it by %.2g mm, noise alone by about %.2g mm",
 		p.centreMM[0], p.centreMM[1], p.centreMM[2], scatter, noise)
+	if scatter > s.resolutionMM()/4 && scatter > hopelessTimes*noise {
+		f.Level = Stop
+	}
 	if len(bad) == 0 {
 		return []Finding{f}
 	}
