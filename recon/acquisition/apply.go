@@ -74,7 +74,8 @@ func (w *workshop) array(label string) (Array, error) {
 			names = append(names, quoted(name))
 		}
 		slices.Sort(names)
-		return a, fault.New(fault.BadSetting, "", "the mapping wants array %s; the file has %s", quoted(label), strings.Join(names[:min(len(names), 30)], ", "))
+		return a, fault.New(fault.BadSetting, "", "the mapping wants array %s; the file has %s", quoted(label),
+			strings.Join(names[:min(len(names), 30)], ", "))
 	}
 	if !w.used[label] {
 		if w.used == nil {
@@ -168,7 +169,8 @@ func (w *workshop) samples(source FieldSource, values []float64) ([]float64, err
 	}
 	dwell, err := single(w.members["dwell_ns"])
 	if err != nil || !(dwell > 0) {
-		return nil, fault.New(fault.BadFile, "", "given as a time, which needs the sampling interval; say that too, or give a sample index")
+		return nil, fault.New(fault.BadFile, "",
+			"given as a time, which needs the sampling interval; say that too, or give a sample index")
 	}
 	for i := range values {
 		values[i] /= dwell
@@ -200,7 +202,8 @@ func flatList(a Array) ([]float64, error) {
 			return columns, nil
 		}
 	}
-	return nil, fault.New(fault.BadFile, a.Name, "shape %s found; a list with one axis is wanted, or a table of equal rows or columns", ShapeText(a.Shape))
+	return nil, fault.New(fault.BadFile, a.Name,
+		"shape %s found; a list with one axis is wanted, or a table of equal rows or columns", ShapeText(a.Shape))
 }
 
 // alike returns n values step apart, when the same stand in all of the given number of rows or columns.
@@ -232,7 +235,8 @@ func evenSteps(values []float64) (first, step float64, err error) {
 	const most = 0.01
 	for i, v := range values {
 		if off := math.Abs(v - first - float64(i)*step); !(off <= most*math.Abs(step)) || step == 0 {
-			return 0, 0, fault.New(fault.BadFile, "", "value %d is %g, even steps of %g from %g would make it %g; an axis in even steps is wanted",
+			return 0, 0, fault.New(fault.BadFile, "",
+				"value %d is %g, even steps of %g from %g would make it %g; an axis in even steps is wanted",
 				i, v, step, first, first+float64(i)*step)
 		}
 	}
@@ -253,7 +257,8 @@ func (w *workshop) gradients(field Field, source FieldSource) (Array, error) {
 	values := make([]float64, shots*len(lists))
 	for c, list := range lists {
 		if len(list) != shots && len(list) != 1 {
-			return Array{}, fault.New(fault.BadFile, "", "%d values in component %d, %d in another; one value per shot is needed", len(list), c+1, shots)
+			return Array{}, fault.New(fault.BadFile, "",
+				"%d values in component %d, %d in another; one value per shot is needed", len(list), c+1, shots)
 		}
 		for s := range shots {
 			values[s*len(lists)+c] = list[min(s, len(list)-1)]
@@ -299,14 +304,16 @@ func tableLists(a Array, take Take) ([][]float64, error) {
 		return nil, err
 	}
 	if len(a.Shape) != 2 {
-		return nil, fault.New(fault.BadFile, a.Name, "shape %s found; [shot, 3] wanted, or [shot, 2] in 2D", ShapeText(a.Shape))
+		return nil, fault.New(fault.BadFile, a.Name, "shape %s found; [shot, 3] wanted, or [shot, 2] in 2D",
+			ShapeText(a.Shape))
 	}
 	shots, parts, step, next := a.Shape[0], a.Shape[1], a.Shape[1], 1
 	if take == Rows {
 		shots, parts, step, next = a.Shape[1], a.Shape[0], 1, a.Shape[1]
 	}
 	if parts != 2 && parts != 3 {
-		return nil, fault.New(fault.BadFile, a.Name, "%d components in shape %s; 3 are wanted, 2 in 2D", parts, ShapeText(a.Shape))
+		return nil, fault.New(fault.BadFile, a.Name, "%d components in shape %s; 3 are wanted, 2 in 2D", parts,
+			ShapeText(a.Shape))
 	}
 	lists := make([][]float64, parts)
 	for c := range lists {

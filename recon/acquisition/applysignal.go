@@ -84,7 +84,8 @@ func axisOf(axes []axis, word string) int {
 // axes returns the axes of the signal, slowest first.
 func (w *workshop) axes(a Array, words []string) ([]axis, error) {
 	if len(words) != len(a.Shape) {
-		return nil, fault.New(fault.BadSetting, a.Name, "%d axes named, shape %s has %d", len(words), ShapeText(a.Shape), len(a.Shape))
+		return nil, fault.New(fault.BadSetting, a.Name, "%d axes named, shape %s has %d", len(words),
+			ShapeText(a.Shape), len(a.Shape))
 	}
 	var out []axis
 	for i, text := range words {
@@ -99,7 +100,8 @@ func (w *workshop) axes(a Array, words []string) ([]axis, error) {
 	}
 	for _, x := range out {
 		if x.word == "one" && x.length != 1 || x.word == "part" && x.length != 2 {
-			return nil, fault.New(fault.BadFile, a.Name, "an axis of length %d named %q in shape %s", x.length, x.word, ShapeText(a.Shape))
+			return nil, fault.New(fault.BadFile, a.Name, "an axis of length %d named %q in shape %s", x.length, x.word,
+				ShapeText(a.Shape))
 		}
 	}
 	if axisOf(out, "sample") < 0 || axisOf(out, "shot") < 0 {
@@ -113,23 +115,27 @@ func (w *workshop) lengths(a Array, held []string, n int) ([]int, error) {
 	out := make([]int, len(held))
 	left, unknown := n, -1
 	for k, word := range held {
-		known := map[string]int{"part": 2, "one": 1, "delay": w.members["delay_us"].Len(), "shot": rowsOf(w.members["gradient_mT_per_m"])}[word]
+		known := map[string]int{"part": 2, "one": 1, "delay": w.members["delay_us"].Len(),
+			"shot": rowsOf(w.members["gradient_mT_per_m"])}[word]
 		if known == 0 || len(held) == 1 {
 			if unknown >= 0 {
-				return nil, fault.New(fault.BadSetting, a.Name, "an axis of %d holds %q; how many of one is not known from another field", n, strings.Join(held, " "))
+				return nil, fault.New(fault.BadSetting, a.Name,
+					"an axis of %d holds %q; how many of one is not known from another field", n, strings.Join(held, " "))
 			}
 			unknown = k
 			continue
 		}
 		if left%known != 0 {
-			return nil, fault.New(fault.BadFile, a.Name, "an axis of %d holds %q, but %d is no multiple of %d (%s)", n, strings.Join(held, " "), left, known, word)
+			return nil, fault.New(fault.BadFile, a.Name, "an axis of %d holds %q, but %d is no multiple of %d (%s)", n,
+				strings.Join(held, " "), left, known, word)
 		}
 		out[k], left = known, left/known
 	}
 	if unknown >= 0 {
 		out[unknown] = left
 	} else if left != 1 {
-		return nil, fault.New(fault.BadFile, a.Name, "an axis of %d holds %q, which make %d", n, strings.Join(held, " "), n/left)
+		return nil, fault.New(fault.BadFile, a.Name, "an axis of %d holds %q, which make %d", n,
+			strings.Join(held, " "), n/left)
 	}
 	return out, nil
 }
@@ -148,14 +154,16 @@ func (w *workshop) parts(a Array, source SignalSource) ([]complex64, error) {
 		return values, err
 	}
 	if a.isComplex() {
-		return nil, fault.New(fault.BadFile, a.Name, "%s found beside an array of imaginary parts; real parts wanted", a.Type)
+		return nil, fault.New(fault.BadFile, a.Name, "%s found beside an array of imaginary parts; real parts wanted",
+			a.Type)
 	}
 	b, err := w.array(source.Imaginary)
 	if err != nil {
 		return nil, err
 	}
 	if !slices.Equal(a.Shape, b.Shape) || b.isComplex() {
-		return nil, fault.New(fault.BadFile, b.Name, "%s of shape %s for the imaginary parts, the real ones have shape %s", b.Type, ShapeText(b.Shape), ShapeText(a.Shape))
+		return nil, fault.New(fault.BadFile, b.Name,
+			"%s of shape %s for the imaginary parts, the real ones have shape %s", b.Type, ShapeText(b.Shape), ShapeText(a.Shape))
 	}
 	imaginary, err := b.Complex64s()
 	if err != nil {

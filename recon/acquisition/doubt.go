@@ -113,7 +113,9 @@ func (c channel) doubts(traces bool) (out []string) {
 	}
 	// Digitisers give volts or whole numbers; beyond these bounds a scale factor was applied once too often or not at all.
 	if top := math.Max(math.Abs(c.least), math.Abs(c.most)); top < 1e-15 || top > 1e15 {
-		out = append(out, fmt.Sprintf("values from %.3g to %.3g; the scale is unusual, check the factor it was written with", c.least, c.most))
+		out = append(out,
+			fmt.Sprintf("values from %.3g to %.3g; the scale is unusual, check the factor it was written with", c.least,
+				c.most))
 	}
 	return out
 }
@@ -128,11 +130,14 @@ func (c channel) clipped() string {
 	rare := func(n int) bool { return 2*n < c.n }
 	switch {
 	case top && rare(c.atMost) && bottom && rare(c.atLeast):
-		return fmt.Sprintf("flat at %g and at %g (%d and %d values); the receiver was clipped", c.most, c.least, c.atMost, c.atLeast)
+		return fmt.Sprintf("flat at %g and at %g (%d and %d values); the receiver was clipped", c.most, c.least,
+			c.atMost, c.atLeast)
 	case top && rare(c.atMost):
-		return fmt.Sprintf("flat at its greatest value %g (%d values, up to %d in a row); the receiver was clipped", c.most, c.atMost, c.longMost)
+		return fmt.Sprintf("flat at its greatest value %g (%d values, up to %d in a row); the receiver was clipped",
+			c.most, c.atMost, c.longMost)
 	case bottom && rare(c.atLeast):
-		return fmt.Sprintf("flat at its least value %g (%d values, up to %d in a row); the receiver was clipped", c.least, c.atLeast, c.longLeast)
+		return fmt.Sprintf("flat at its least value %g (%d values, up to %d in a row); the receiver was clipped",
+			c.least, c.atLeast, c.longLeast)
 	}
 	return ""
 }

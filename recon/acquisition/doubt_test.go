@@ -41,9 +41,10 @@ func TestEveryDoubtIsSaidInWords(t *testing.T) {
 		"NaN and infinity":          {spoiled, "2 values are NaN and 1 infinite, of 100"},
 		"a dead channel":            {zeros, "all values are 0; the channel may not have been recorded"},
 		"clipped on both sides":     {clippedAt(700, noise(4000)), "flat at 700 and at -700"},
-		"clipped above":             {append(clippedAt(700, noise(120)), noise(60)[:30]...), "flat at its greatest value 700"},
-		"too small":                 {scaledBy(1e-21, noise(4000)), "the scale is unusual"},
-		"too large":                 {scaledBy(1e16, noise(4000)), "the scale is unusual"},
+		"clipped above": {append(clippedAt(700, noise(120)), noise(60)[:30]...),
+			"flat at its greatest value 700"},
+		"too small": {scaledBy(1e-21, noise(4000)), "the scale is unusual"},
+		"too large": {scaledBy(1e16, noise(4000)), "the scale is unusual"},
 	} {
 		got := strings.Join(Doubts(named(t, "x", "", tableOf(len(c.values)), c.values)), "\n")
 		if (got == "") != (c.words == "") || !strings.Contains(got, c.words) {
@@ -84,10 +85,12 @@ func TestTheChannelsOfComplexTracesAreDoubtedApart(t *testing.T) {
 	if got := Doubts(weave(good, noise(500))); len(got) != 0 {
 		t.Errorf("%q", got)
 	}
-	if got := Doubts(weave(good, dead)); len(got) != 1 || !strings.HasPrefix(got[0], "x, imaginary part: all values are 0") {
+	if got := Doubts(weave(good, dead)); len(got) != 1 ||
+		!strings.HasPrefix(got[0], "x, imaginary part: all values are 0") {
 		t.Errorf("%q", got)
 	}
-	if got := Doubts(weave(good, scaledBy(1e-5, good))); len(got) != 1 || !strings.Contains(got[0], "one may be scaled otherwise") {
+	if got := Doubts(weave(good, scaledBy(1e-5, good))); len(got) != 1 ||
+		!strings.Contains(got[0], "one may be scaled otherwise") {
 		t.Errorf("%q", got)
 	}
 }

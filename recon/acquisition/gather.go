@@ -18,7 +18,8 @@ func Stack(name string, leading []int, arrays []Array) (Array, error) {
 	total := 0
 	for _, a := range arrays {
 		if a.Type != first.Type || !slices.Equal(a.Shape, first.Shape) {
-			return Array{}, fault.New(fault.BadFile, a.Name, "%s of shape %s, %s has %s of shape %s; they must be alike to belong together",
+			return Array{}, fault.New(fault.BadFile, a.Name,
+				"%s of shape %s, %s has %s of shape %s; they must be alike to belong together",
 				a.Type, ShapeText(a.Shape), first.Name, first.Type, ShapeText(first.Shape))
 		}
 		total += len(a.raw)
@@ -28,7 +29,8 @@ func Stack(name string, leading []int, arrays []Array) (Array, error) {
 	layout.FirstAxisFastest = false
 	for _, a := range arrays {
 		if a.layout.Size != layout.Size || a.layout.BigEndian != layout.BigEndian || a.layout.Kind != layout.Kind {
-			return Array{}, fault.New(fault.BadFile, a.Name, "%s is written in another way than in %s; write all alike", a.Type, first.Name)
+			return Array{}, fault.New(fault.BadFile, a.Name, "%s is written in another way than in %s; write all alike",
+				a.Type, first.Name)
 		}
 	}
 	raw := make([]byte, 0, total)

@@ -19,8 +19,10 @@ func TestNumberedArraysBecomeOne(t *testing.T) {
 			arrays = append(arrays, named(t, fmt.Sprintf("c.%d.%d", d+1, s+1), "", nil, []float64{float64(10*d + s)}))
 		}
 	}
-	arrays = append(arrays, named(t, "odd.1", "", []int{2}, []float64{1, 2}), named(t, "odd.2", "", []int{3}, []float64{1, 2, 3}),
-		named(t, "lone.1", "", nil, []float64{1}), named(t, "r1_zero", "", nil, []float64{1}), named(t, "r2_zero", "", nil, []float64{2}))
+	arrays = append(arrays, named(t, "odd.1", "", []int{2}, []float64{1, 2}),
+		named(t, "odd.2", "", []int{3}, []float64{1, 2, 3}),
+		named(t, "lone.1", "", nil, []float64{1}), named(t, "r1_zero", "", nil, []float64{1}), named(t, "r2_zero", "",
+			nil, []float64{2}))
 	got := Gather(arrays)
 	var names []string
 	for _, a := range got {
@@ -32,7 +34,8 @@ func TestNumberedArraysBecomeOne(t *testing.T) {
 	}
 	re, _ := got[0].Float64s()
 	c, _ := got[1].Float64s()
-	if !slices.Equal(re, []float64{8, -1, 9, -1, 10, -1}) || !slices.Equal(c, []float64{0, 1, 10, 11}) || got[0].Unit != "V" {
+	if !slices.Equal(re, []float64{8, -1, 9, -1, 10, -1}) || !slices.Equal(c, []float64{0, 1, 10, 11}) ||
+		got[0].Unit != "V" {
 		t.Errorf("%v, %v", re, c)
 	}
 }
@@ -78,7 +81,8 @@ func TestCutArraysKeepWhatIsComplete(t *testing.T) {
 			wantFault(t, err, fault.BadFile)
 			continue
 		}
-		if err != nil || !slices.Equal(a.Shape, c.want) || a.Truncated == nil || a.Truncated.Axis != c.axis || a.Truncated.Stated != c.shape[c.axis] {
+		if err != nil || !slices.Equal(a.Shape, c.want) || a.Truncated == nil || a.Truncated.Axis != c.axis ||
+			a.Truncated.Stated != c.shape[c.axis] {
 			t.Errorf("%v: %v %+v, %v", c, a.Shape, a.Truncated, err)
 		}
 	}
@@ -126,7 +130,8 @@ func TestACutSignalOpensWithAWarningThatStays(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, a := range []*Acquisition{direct, mapped} {
-			if a.Delays != c.delays || a.Shots != c.shots || len(a.Warnings) != 1 || !strings.Contains(a.Warnings[0], words) {
+			if a.Delays != c.delays || a.Shots != c.shots || len(a.Warnings) != 1 ||
+				!strings.Contains(a.Warnings[0], words) {
 				t.Errorf("%d delays, %d shots, %q", a.Delays, a.Shots, a.Warnings)
 			}
 		}

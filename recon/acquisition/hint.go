@@ -13,11 +13,15 @@ var hints = []struct {
 	take    Take
 	phrases []string
 }{
-	{"gradient_mT_per_m", Values, []string{"gradient", "gradients", "grad", "grads", "g", "gxyz", "gradient table", "directions"}},
-	{"delay_us", Values, []string{"delay", "delays", "tau", "t rec", "trec", "t inv", "tinv", "ti", "recovery", "recovery delay", "inversion delay", "delay time", "delay times", "delay axis"}},
-	{"dwell_ns", Values, []string{"dwell", "dwell time", "dt", "sampling interval", "sample interval", "sample time", "sampling time", "time step", "tstep", "sampling period",
+	{"gradient_mT_per_m", Values, []string{"gradient", "gradients", "grad", "grads", "g", "gxyz", "gradient table",
+		"directions"}},
+	{"delay_us", Values, []string{"delay", "delays", "tau", "t rec", "trec", "t inv", "tinv", "ti", "recovery",
+		"recovery delay", "inversion delay", "delay time", "delay times", "delay axis"}},
+	{"dwell_ns", Values, []string{"dwell", "dwell time", "dt", "sampling interval", "sample interval", "sample time",
+		"sampling time", "time step", "tstep", "sampling period",
 		"sampling rate", "sample rate", "samplerate", "sampling frequency", "fs", "rate", "spectral width", "sw"}},
-	{"time_zero_sample", Values, []string{"time zero", "t zero", "tzero", "t0", "zero", "echo centre", "echo center", "centre sample", "center sample", "zero sample", "zero index"}},
+	{"time_zero_sample", Values, []string{"time zero", "t zero", "tzero", "t0", "zero", "echo centre", "echo center",
+		"centre sample", "center sample", "zero sample", "zero index"}},
 	{"sequence", Values, []string{"sequence", "pulse sequence", "seq", "experiment", "method"}},
 	{"encoding", Values, []string{"encoding", "encoding scheme"}},
 	{"position_step_mm", Values, []string{"position step", "dx", "dr", "pixel", "pixel size", "bin size"}},
@@ -25,7 +29,8 @@ var hints = []struct {
 	{"shot_time_s", Values, []string{"shot time", "shot times", "timestamp", "timestamps", "elapsed"}},
 	{"echo_time_us", Values, []string{"echo time", "te"}},
 	{"repetition_us", Values, []string{"repetition", "repetition time", "tr", "shot repetition time"}},
-	{"carrier_MHz", Values, []string{"carrier", "carrier frequency", "microwave frequency", "rf frequency", "frequency", "freq", "f0"}},
+	{"carrier_MHz", Values, []string{"carrier", "carrier frequency", "microwave frequency", "rf frequency", "frequency",
+		"freq", "f0"}},
 	{"temperature_C", Values, []string{"temperature", "temp"}},
 	{"probe", Values, []string{"probe", "spin probe", "probe name"}},
 	{"note", Values, []string{"note", "notes", "comment", "comments", "remark", "remarks"}},
@@ -35,10 +40,12 @@ var hints = []struct {
 var axisPhrases = []string{"t", "x", "time", "times", "time axis", "taxis", "first column", "axis", "position", "positions"}
 
 // signalPhrases call the signal.
-var signalPhrases = []string{"signal", "signals", "sig", "data", "trace", "traces", "fid", "fids", "echo", "echoes", "projection", "projections", "raw"}
+var signalPhrases = []string{"signal", "signals", "sig", "data", "trace", "traces", "fid", "fids", "echo", "echoes",
+	"projection", "projections", "raw"}
 
 // pairPhrases call the real and the imaginary part.
-var pairPhrases = [][2]string{{"re", "im"}, {"real", "imag"}, {"real", "imaginary"}, {"r", "i"}, {"i", "q"}, {"inphase", "quadrature"}, {"cos", "sin"}, {"x", "y"}, {"0", "90"}}
+var pairPhrases = [][2]string{{"re", "im"}, {"real", "imag"}, {"real", "imaginary"}, {"r", "i"}, {"i", "q"},
+	{"inphase", "quadrature"}, {"cos", "sin"}, {"x", "y"}, {"0", "90"}}
 
 // nameWords parts a name into small words: at anything but letters and digits, and where a capital follows a small letter. A
 // last word that is a unit, or "#", is returned apart.

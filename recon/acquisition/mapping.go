@@ -158,7 +158,8 @@ func ParseMapping(text []byte) (Mapping, error) {
 	if err := json.Unmarshal(text, &m); err != nil {
 		var wrong *json.UnmarshalTypeError
 		if errors.As(err, &wrong) {
-			return Mapping{}, fault.New(fault.BadSetting, "mapping "+wrong.Field, "a JSON %s found, %s wanted", wrong.Value, wrong.Type)
+			return Mapping{}, fault.New(fault.BadSetting, "mapping "+wrong.Field, "a JSON %s found, %s wanted",
+				wrong.Value, wrong.Type)
 		}
 		return Mapping{}, fault.New(fault.BadSetting, "mapping", "%v", err)
 	}
@@ -191,7 +192,8 @@ func knownKeys(tree any, t reflect.Type, where string) error {
 		for key, element := range value {
 			field, known := fields[key]
 			if !known {
-				return fault.New(fault.BadSetting, where, "key %q is not known; known here: %s", key, strings.Join(names, ", "))
+				return fault.New(fault.BadSetting, where, "key %q is not known; known here: %s", key,
+					strings.Join(names, ", "))
 			}
 			if err := knownKeys(element, field, where+"."+key); err != nil {
 				return err
@@ -215,7 +217,8 @@ func (m Mapping) Check() error {
 	for _, axis := range m.Signal.Axes {
 		for word := range strings.FieldsSeq(axis) {
 			if !slices.Contains(axisWords, word) {
-				return fault.New(fault.BadSetting, "mapping signal.axes", "%q is no axis; use %s", word, strings.Join(axisWords, ", "))
+				return fault.New(fault.BadSetting, "mapping signal.axes", "%q is no axis; use %s", word,
+					strings.Join(axisWords, ", "))
 			}
 			if seen[word] && word != "one" {
 				return fault.New(fault.BadSetting, "mapping signal.axes", "%q stands twice", word)
@@ -223,16 +226,19 @@ func (m Mapping) Check() error {
 			seen[word] = true
 		}
 		if strings.TrimSpace(axis) == "" {
-			return fault.New(fault.BadSetting, "mapping signal.axes", "an axis without a word; use %s", strings.Join(axisWords, ", "))
+			return fault.New(fault.BadSetting, "mapping signal.axes", "an axis without a word; use %s",
+				strings.Join(axisWords, ", "))
 		}
 	}
 	if seen["part"] && m.Signal.Imaginary != "" {
-		return fault.New(fault.BadSetting, "mapping signal", "imaginary parts both along an axis and in %s; choose one", quoted(m.Signal.Imaginary))
+		return fault.New(fault.BadSetting, "mapping signal", "imaginary parts both along an axis and in %s; choose one",
+			quoted(m.Signal.Imaginary))
 	}
 	named := map[string]bool{"signal": true}
 	for _, f := range m.Fields {
 		if named[f.Field] {
-			return fault.New(fault.BadSetting, "mapping fields", "%q stands twice, or is the signal, which has a place of its own", f.Field)
+			return fault.New(fault.BadSetting, "mapping fields",
+				"%q stands twice, or is the signal, which has a place of its own", f.Field)
 		}
 		named[f.Field] = true
 		if err := f.check(); err != nil {
@@ -247,7 +253,8 @@ func (s FieldSource) check() error {
 	where := "mapping " + s.Field
 	at := slices.IndexFunc(Dictionary, func(f Field) bool { return f.Name == s.Field })
 	if at < 0 {
-		return fault.New(fault.BadSetting, "mapping fields", "%s is no field of the dictionary%s", quoted(s.Field), suggestion(s.Field))
+		return fault.New(fault.BadSetting, "mapping fields", "%s is no field of the dictionary%s", quoted(s.Field),
+			suggestion(s.Field))
 	}
 	field := Dictionary[at]
 	ways := count(len(s.Arrays) > 0) + count(len(s.Numbers) > 0) + count(s.Text != "")
@@ -257,7 +264,8 @@ func (s FieldSource) check() error {
 	case !slices.Contains(Takes, s.Take):
 		return fault.New(fault.BadSetting, where, "take %q is not known; use step, zero, rows or leave it out", s.Take)
 	case len(s.Arrays) > 1 && (s.Field != "gradient_mT_per_m" || len(s.Arrays) > 3):
-		return fault.New(fault.BadSetting, where, "%d arrays; one is wanted (gradients may come as two or three lists)", len(s.Arrays))
+		return fault.New(fault.BadSetting, where, "%d arrays; one is wanted (gradients may come as two or three lists)",
+			len(s.Arrays))
 	case s.Factor-s.Factor != 0:
 		return fault.New(fault.BadSetting, where, "factor %g; a finite number is wanted", s.Factor)
 	}

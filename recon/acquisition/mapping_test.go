@@ -14,11 +14,13 @@ import (
 // measured returns an acquisition of 3 delays, 5 shots and 8 samples, whose numbers are exact in float32 and in every unit
 // used below.
 func measured() *Acquisition {
-	a := &Acquisition{Name: "traces", Delays: 3, Shots: 5, Samples: 8, Dim: 3, DelayUS: []float64{0.5, 2, 8}, DwellNS: 4, TimeZeroSample: 2,
+	a := &Acquisition{Name: "traces", Delays: 3, Shots: 5, Samples: 8, Dim: 3, DelayUS: []float64{0.5, 2, 8},
+		DwellNS: 4, TimeZeroSample: 2,
 		Sequence: InversionRecovery, Encoding: Spoke, Domain: Time, ShotRole: make([]int, 5)}
 	for s := range 5 {
 		angle := float64(s)
-		a.GradientMTPerM = append(a.GradientMTPerM, [3]float64{15 * math.Cos(angle), 12 * math.Sin(angle), 9 * math.Sin(angle)})
+		a.GradientMTPerM = append(a.GradientMTPerM,
+			[3]float64{15 * math.Cos(angle), 12 * math.Sin(angle), 9 * math.Sin(angle)})
 	}
 	for d := range 3 {
 		for s := range 5 {
@@ -115,9 +117,12 @@ var disguises = []disguise{
 		arrays: func(t *testing.T, a *Acquisition) []Array {
 			g := slices.Concat(component(a, 0, 1e-3), component(a, 1, 1e-3), component(a, 2, 1e-3))
 			return []Array{
-				complexes(t, "exp.fid", []int{8, a.Shots, 3}, permuted(a, "jsd", 2)), named(t, "exp.G", "T/m", []int{3, a.Shots}, g),
-				named(t, "exp.tau", "s", []int{1, 3}, scaledBy(1e-6, a.DelayUS)), named(t, "exp.dt_s", "", []int{1, 1}, []float64{4e-9}),
-				named(t, "exp.t0", "points", []int{1, 1}, []float64{2}), TextOf("exp.seq", "Inversion recovery with echo"), TextOf("exp.encoding", "spoke"),
+				complexes(t, "exp.fid", []int{8, a.Shots, 3}, permuted(a, "jsd", 2)), named(t, "exp.G", "T/m",
+					[]int{3, a.Shots}, g),
+				named(t, "exp.tau", "s", []int{1, 3}, scaledBy(1e-6, a.DelayUS)), named(t, "exp.dt_s", "", []int{1, 1},
+					[]float64{4e-9}),
+				named(t, "exp.t0", "points", []int{1, 1}, []float64{2}), TextOf("exp.seq",
+					"Inversion recovery with echo"), TextOf("exp.encoding", "spoke"),
 			}
 		},
 	},
@@ -126,9 +131,12 @@ var disguises = []disguise{
 		arrays: func(t *testing.T, a *Acquisition) []Array {
 			return []Array{
 				named(t, "t", "us", []int{8}, []float64{-0.008, -0.004, 0, 0.004, 0.008, 0.012, 0.016, 0.020}),
-				named(t, "d#s#_re", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 0)), named(t, "d#s#_im", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 1)),
-				named(t, "gx [G/cm]", "G/cm", []int{a.Shots}, component(a, 0, 0.1)), named(t, "gy", "G/cm", []int{a.Shots}, component(a, 1, 0.1)),
-				named(t, "gz", "G/cm", []int{a.Shots}, component(a, 2, 0.1)), named(t, "delays_ns", "", []int{3}, scaledBy(1000, a.DelayUS)),
+				named(t, "d#s#_re", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 0)), named(t, "d#s#_im", "",
+					[]int{3, a.Shots, 8}, permuted(a, "dsj", 1)),
+				named(t, "gx [G/cm]", "G/cm", []int{a.Shots}, component(a, 0, 0.1)), named(t, "gy", "G/cm",
+					[]int{a.Shots}, component(a, 1, 0.1)),
+				named(t, "gz", "G/cm", []int{a.Shots}, component(a, 2, 0.1)), named(t, "delays_ns", "", []int{3},
+					scaledBy(1000, a.DelayUS)),
 			}
 		},
 		typed: map[string]FieldSource{"sequence": typedSequence}, missing: []string{"sequence"},
@@ -138,8 +146,10 @@ var disguises = []disguise{
 		arrays: func(t *testing.T, a *Acquisition) []Array {
 			g := slices.Concat(component(a, 0, 1), component(a, 1, 1), component(a, 2, 1))
 			return []Array{
-				named(t, "raw", "", []int{2, 8, 3 * a.Shots}, permuted(a, "pjds", 2)), named(t, "gradient", "mT/m", []int{3, a.Shots}, g),
-				named(t, "TI", "", []int{3}, a.DelayUS), named(t, "fs_MHz", "", nil, []float64{250}), named(t, "echo_centre", "ns", nil, []float64{8}),
+				named(t, "raw", "", []int{2, 8, 3 * a.Shots}, permuted(a, "pjds", 2)), named(t, "gradient", "mT/m",
+					[]int{3, a.Shots}, g),
+				named(t, "TI", "", []int{3}, a.DelayUS), named(t, "fs_MHz", "", nil, []float64{250}), named(t,
+					"echo_centre", "ns", nil, []float64{8}),
 			}
 		},
 		typed: map[string]FieldSource{"sequence": typedSequence}, missing: []string{"sequence"},
@@ -149,13 +159,17 @@ var disguises = []disguise{
 		arrays: func(t *testing.T, a *Acquisition) []Array {
 			gx, gy, gz := component(a, 0, 1), component(a, 1, 1), component(a, 2, 1)
 			return []Array{
-				named(t, "real", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 0)), named(t, "imaginary", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 1)),
-				named(t, "GX", "mT/m", []int{3, a.Shots}, slices.Concat(gx, gx, gx)), named(t, "GY", "mT/m", []int{3, a.Shots}, slices.Concat(gy, gy, gy)),
-				named(t, "GZ", "mT/m", []int{3, a.Shots}, slices.Concat(gz, gz, gz)), named(t, "DWELL", "ns", nil, []float64{4}),
+				named(t, "real", "", []int{3, a.Shots, 8}, permuted(a, "dsj", 0)), named(t, "imaginary", "",
+					[]int{3, a.Shots, 8}, permuted(a, "dsj", 1)),
+				named(t, "GX", "mT/m", []int{3, a.Shots}, slices.Concat(gx, gx, gx)), named(t, "GY", "mT/m",
+					[]int{3, a.Shots}, slices.Concat(gy, gy, gy)),
+				named(t, "GZ", "mT/m", []int{3, a.Shots}, slices.Concat(gz, gz, gz)), named(t, "DWELL", "ns", nil,
+					[]float64{4}),
 			}
 		},
 		typed: map[string]FieldSource{
-			"sequence": typedSequence, "delay_us": {Numbers: []float64{500, 2000, 8000}, Unit: "ns"}, "time_zero_sample": {Numbers: []float64{2}, Unit: "points"},
+			"sequence": typedSequence, "delay_us": {Numbers: []float64{500, 2000, 8000},
+				Unit: "ns"}, "time_zero_sample": {Numbers: []float64{2}, Unit: "points"},
 		},
 		missing: []string{"delay_us", "sequence"},
 	},
@@ -243,7 +257,7 @@ func TestADictionaryFileIsMappedWithoutAGuess(t *testing.T) {
 func TestReasonsSayWhatWasSeen(t *testing.T) {
 	m := Propose(disguises[0].arrays(t, measured()))
 	for field, words := range map[string]string{
-		"delay_us": `length 3 matches the delay axis of "exp.fid"; the file states s`, "dwell_ns": "the name says s", "gradient_mT_per_m": "5 entries match the shot axis",
+		"delay_us": `length 3 matches the delay axis of "exp.fid"; the file states s`, "dwell_ns": "the name says s", "gradient_mT_per_m": `5 entries, as many as the shot axis of "exp.fid"`,
 		"sequence": `says "Inversion recovery with echo"`,
 	} {
 		if reason := m.field(field).Reason; !strings.Contains(reason, words) {
@@ -251,8 +265,10 @@ func TestReasonsSayWhatWasSeen(t *testing.T) {
 		}
 	}
 	m = Propose([]Array{complexes(t, "sig", []int{10, 4, 64}, make([]float64, 2*10*4*64)),
-		named(t, "times", "", []int{10}, []float64{1e-3, 2e-3, 3e-3, 5e-3, 7e-3, 9e-3, 12e-3, 17e-3, 22e-3, 3e-2}), named(t, "tau", "", []int{10}, []float64{.3e-6, 1e-6, 2e-6, 3e-6, 4e-6, 5e-6, 6e-6, 7e-6, 8e-6, 9e-6})})
-	if s := m.field("delay_us"); s.Unit != "s" || !s.Guessed || !strings.Contains(s.Reason, "values 3e-07..9e-06: s? choose the unit") {
+		named(t, "times", "", []int{10}, []float64{1e-3, 2e-3, 3e-3, 5e-3, 7e-3, 9e-3, 12e-3, 17e-3, 22e-3,
+			3e-2}), named(t, "tau", "", []int{10}, []float64{.3e-6, 1e-6, 2e-6, 3e-6, 4e-6, 5e-6, 6e-6, 7e-6, 8e-6, 9e-6})})
+	if s := m.field("delay_us"); s.Unit != "s" || !s.Guessed ||
+		!strings.Contains(s.Reason, "values 3e-07..9e-06: s? choose the unit") {
 		t.Errorf("%+v", s)
 	}
 }
@@ -285,7 +301,8 @@ func TestAMappingOpensTheNextFileOfItsLayout(t *testing.T) {
 }
 
 func TestAnArrayCalledAfterItsFileIsFoundInTheNext(t *testing.T) {
-	monday, tuesday := named(t, "monday", "", []int{3}, make([]float64, 3)), named(t, "tuesday", "", []int{3}, make([]float64, 3))
+	monday, tuesday := named(t, "monday", "", []int{3}, make([]float64, 3)), named(t, "tuesday", "", []int{3},
+		make([]float64, 3))
 	monday.AfterFile, tuesday.AfterFile = true, true
 	if Signature([]Array{monday}) != Signature([]Array{tuesday}) || Labels([]Array{monday})[0] != "*" {
 		t.Errorf("%q", Labels([]Array{monday}))
@@ -311,28 +328,47 @@ func TestContradictionsAreFaultsWithBothNumbers(t *testing.T) {
 				a[i] = named(t, a[i].Name, a[i].Unit, []int{4}, make([]float64, 4))
 			}
 		}, fault.BadFile, "4 gradients for 5 shots"},
-		"components of unequal length": {func(a []Array, m *Mapping) { a[4] = named(t, "gy", "G/cm", []int{4}, make([]float64, 4)) },
+		"components of unequal length": {func(a []Array,
+			m *Mapping) {
+			a[4] = named(t, "gy", "G/cm", []int{4}, make([]float64, 4))
+		},
 			fault.BadFile, "5 values in component 1, 4 in another"[2:9]},
-		"2 delays for 3": {func(a []Array, m *Mapping) { a[6] = named(t, "delays_ns", "", []int{2}, []float64{1, 2}) }, fault.BadFile, "2 delays"},
-		"parts of other shapes": {func(a []Array, m *Mapping) { a[2] = named(t, a[2].Name, "", []int{3, 5, 7}, make([]float64, 105)) },
+		"2 delays for 3": {func(a []Array, m *Mapping) { a[6] = named(t, "delays_ns", "", []int{2}, []float64{1, 2}) },
+			fault.BadFile, "2 delays"},
+		"parts of other shapes": {func(a []Array, m *Mapping) {
+			a[2] = named(t, a[2].Name, "", []int{3, 5, 7},
+				make([]float64, 105))
+		},
 			fault.BadFile, "[3, 5, 7] for the imaginary parts, the real ones have shape [3, 5, 8]"},
-		"an uneven axis":   {func(a []Array, m *Mapping) { a[0] = named(t, "t", "us", []int{8}, []float64{0, 1, 2, 3, 4, 5, 6, 9}) }, fault.BadFile, "even steps"},
-		"an array gone":    {func(a []Array, m *Mapping) { a[0].Name = "tt" }, fault.BadSetting, `wants array "t"`},
-		"no unit":          {func(a []Array, m *Mapping) { setUnit(m, "delay_us", "") }, fault.BadSetting, "no unit chosen; use ns, us, ms, s"},
-		"a wrong unit":     {func(a []Array, m *Mapping) { setUnit(m, "delay_us", "mm") }, fault.BadSetting, `unit "mm"; use ns, us, ms, s`},
-		"an axis twice":    {func(a []Array, m *Mapping) { m.Signal.Axes = []string{"shot", "shot", "sample"} }, fault.BadSetting, `"shot" stands twice`},
-		"an unknown axis":  {func(a []Array, m *Mapping) { m.Signal.Axes[0] = "echo" }, fault.BadSetting, `"echo" is no axis`},
-		"too few axes":     {func(a []Array, m *Mapping) { m.Signal.Axes = m.Signal.Axes[1:] }, fault.BadSetting, "2 axes named, shape [3, 5, 8] has 3"},
-		"no imaginary":     {func(a []Array, m *Mapping) { m.Signal.Imaginary = "" }, fault.BadFile, "traces need an imaginary part"},
-		"no signal":        {func(a []Array, m *Mapping) { m.Signal.Array = "" }, fault.BadSetting, "no array chosen"},
-		"an unknown field": {func(a []Array, m *Mapping) { m.Fields[0].Field = "dwel_ns" }, fault.BadSetting, "did you mean dwell_ns?"},
-		"no multiple":      {func(a []Array, m *Mapping) { m.Signal.Axes = []string{"one", "delay shot", "sample"} }, fault.BadFile, "5 is no multiple of 3"},
+		"an uneven axis": {func(a []Array, m *Mapping) {
+			a[0] = named(t, "t", "us", []int{8}, []float64{0, 1, 2, 3, 4,
+				5, 6, 9})
+		}, fault.BadFile, "even steps"},
+		"an array gone": {func(a []Array, m *Mapping) { a[0].Name = "tt" }, fault.BadSetting, `wants array "t"`},
+		"no unit": {func(a []Array, m *Mapping) { setUnit(m, "delay_us", "") }, fault.BadSetting,
+			"no unit chosen; use ns, us, ms, s"},
+		"a wrong unit": {func(a []Array, m *Mapping) { setUnit(m, "delay_us", "mm") }, fault.BadSetting,
+			`unit "mm"; use ns, us, ms, s`},
+		"an axis twice": {func(a []Array, m *Mapping) { m.Signal.Axes = []string{"shot", "shot", "sample"} },
+			fault.BadSetting, `"shot" stands twice`},
+		"an unknown axis": {func(a []Array, m *Mapping) { m.Signal.Axes[0] = "echo" }, fault.BadSetting,
+			`"echo" is no axis`},
+		"too few axes": {func(a []Array, m *Mapping) { m.Signal.Axes = m.Signal.Axes[1:] }, fault.BadSetting,
+			"2 axes named, shape [3, 5, 8] has 3"},
+		"no imaginary": {func(a []Array, m *Mapping) { m.Signal.Imaginary = "" }, fault.BadFile,
+			"traces need an imaginary part"},
+		"no signal": {func(a []Array, m *Mapping) { m.Signal.Array = "" }, fault.BadSetting, "no array chosen"},
+		"an unknown field": {func(a []Array, m *Mapping) { m.Fields[0].Field = "dwel_ns" }, fault.BadSetting,
+			"did you mean dwell_ns?"},
+		"no multiple": {func(a []Array, m *Mapping) { m.Signal.Axes = []string{"one", "delay shot", "sample"} },
+			fault.BadFile, "5 is no multiple of 3"},
 	} {
 		arrays, m := base()
 		m.Signal.Axes = slices.Clone(m.Signal.Axes)
 		c.change(arrays, &m)
 		got, _, err := Apply("traces.csv", arrays, m)
-		if f := wantFault(t, err, c.kind); got != nil || !strings.Contains(f.Error(), c.words) || !strings.HasPrefix(f.Error(), "traces.csv") && c.kind == fault.BadFile {
+		if f := wantFault(t, err, c.kind); got != nil || !strings.Contains(f.Error(), c.words) ||
+			!strings.HasPrefix(f.Error(), "traces.csv") && c.kind == fault.BadFile {
 			t.Errorf("%s: %v lacks %q", name, f, c.words)
 		}
 	}
@@ -372,8 +408,10 @@ func TestUnitsOfTheTable(t *testing.T) {
 		base  string
 		want  float64
 	}{
-		{0.015, "T/m", "mT/m", 15}, {1.5, "G/cm", "mT/m", 15}, {15, "mT/m", "mT/m", 15}, {250, "MHz", "ns", 4}, {250e6, "Hz", "ns", 4}, {0.25, "GHz", "ns", 4},
-		{4e-9, "s", "ns", 4}, {4e-3, "µs", "ns", 4}, {8e-6, "seconds", "us", 8}, {300, "K", "degC", 26.85}, {1, "1/us/kPa", "1/us/torr", 0.133322368421},
+		{0.015, "T/m", "mT/m", 15}, {1.5, "G/cm", "mT/m", 15}, {15, "mT/m", "mT/m", 15}, {250, "MHz", "ns", 4}, {250e6,
+			"Hz", "ns", 4}, {0.25, "GHz", "ns", 4},
+		{4e-9, "s", "ns", 4}, {4e-3, "µs", "ns", 4}, {8e-6, "seconds", "us", 8}, {300, "K", "degC", 26.85}, {1,
+			"1/us/kPa", "1/us/torr", 0.133322368421},
 		{9.6, "GHz", "MHz", 9600}, {0.5, "m", "mm", 500},
 	} {
 		u, ok := UnitFor(c.unit, c.base)

@@ -81,7 +81,9 @@ func (p *proposer) signal() {
 		}
 		all = append(all, p.candidate(i, a))
 		if j, ok := p.partner(i); ok && !p.real {
-			all = append(all, candidate{i, j, 1, 2 * a.Len(), fmt.Sprintf("%s and %s have one shape and the names of real and imaginary parts", quoted(a.Name), quoted(p.arrays[j].Name))})
+			all = append(all, candidate{i, j, 1, 2 * a.Len(),
+				fmt.Sprintf("%s and %s have one shape and the names of real and imaginary parts", quoted(a.Name),
+					quoted(p.arrays[j].Name))})
 		}
 	}
 	if len(all) == 0 {
@@ -91,7 +93,8 @@ func (p *proposer) signal() {
 	best := slices.MinFunc(all, func(a, b candidate) int {
 		// A way without quadrature must hold four times as much to be likelier.
 		left, right := p.weight(a), p.weight(b)
-		if a.rank != b.rank && (a.rank == 3 && left > 4*right || b.rank == 3 && right > 4*left || a.rank < 3 && b.rank < 3 && max(left, right) > 2*min(left, right)) {
+		if a.rank != b.rank && (a.rank == 3 && left > 4*right || b.rank == 3 && right > 4*left || a.rank < 3 &&
+			b.rank < 3 && max(left, right) > 2*min(left, right)) {
 			return cmp.Compare(right, left)
 		}
 		return cmp.Or(cmp.Compare(a.rank, b.rank), cmp.Compare(right, left), cmp.Compare(a.at, b.at))
@@ -131,7 +134,8 @@ func (p *proposer) weight(c candidate) int {
 
 // candidate tells how one array alone could be the signal.
 func (p *proposer) candidate(i int, a Array) candidate {
-	c := candidate{at: i, imaginary: -1, rank: 3, values: a.Len(), reason: fmt.Sprintf("the largest array, %s of shape %s; real values without an imaginary part are taken as projections", a.Type, ShapeText(a.Shape))}
+	c := candidate{at: i, imaginary: -1, rank: 3, values: a.Len(),
+		reason: fmt.Sprintf("the largest array, %s of shape %s; real values without an imaginary part are taken as projections", a.Type, ShapeText(a.Shape))}
 	switch {
 	case a.isComplex():
 		c.rank, c.values = 0, 2*a.Len()
@@ -157,7 +161,8 @@ func (p *proposer) partner(i int) (int, bool) {
 			wanted := slices.Clone(p.words[i])
 			wanted[k] = other
 			for j, b := range p.arrays {
-				if j != i && !b.isComplex() && !b.isText() && slices.Equal(p.words[j], wanted) && slices.Equal(a.Shape, b.Shape) {
+				if j != i && !b.isComplex() && !b.isText() && slices.Equal(p.words[j], wanted) &&
+					slices.Equal(a.Shape, b.Shape) {
 					return j, true
 				}
 			}
@@ -201,66 +206,76 @@ func (p *proposer) add(s FieldSource, taken ...int) {
 	}
 }
 
-func (p *proposer) has(field string) bool {
-	return slices.ContainsFunc(p.found, func(s FieldSource) bool { return s.Field == field })
+// gradientChoice is one way to read the gradients.
+type gradientChoice struct {
+	source FieldSource
+	at     []int // its arrays
+	shots  int
+	named  int // 0 by nothing, 1 by a name like it, 2 by the name of the field
+	score  int
 }
 
 // gradient chooses the table of gradients, or the lists of its components.
 func (p *proposer) gradient() {
-	type choice struct {
-		source FieldSource
-		at     []int
-		shots  int
-		score  int
-	}
-	var best choice
-	consider := func(c choice, named int) {
+	var best gradientChoice
+	for _, c := range append(p.gradientTables(), p.gradientLists()...) {
 		exact, multiple := p.matches(c.shots)
-		c.score = 4*min(named, 1) + 3*count(exact) + count(multiple)
-		if named == 2 {
-			c.score += 20
+		c.score = []int{0, 4, 24}[c.named] + 3*count(exact) + count(multiple)
+		said := "no axis of the signal has that length"
+		if exact {
+			said = "as many as the shot axis of " + quoted(p.arrays[p.signalAt].Name)
 		}
-		switch {
-		case exact:
-			c.source.Reason += fmt.Sprintf("; %d entries match the shot axis of %s", c.shots, quoted(p.arrays[p.signalAt].Name))
-		default:
-			c.source.Reason += fmt.Sprintf("; %d entries, no axis of the signal has that length", c.shots)
-		}
-		if c.score > best.score && (c.score > 3 || named > 0) {
+		c.source.Reason += fmt.Sprintf("; %d entries, %s", c.shots, said)
+		if c.score > best.score && (c.score > 3 || c.named > 0) {
 			best = c
 		}
-	}
-	for i, a := range p.arrays {
-		if p.taken[i] || a.isText() || a.isComplex() || len(a.Shape) != 2 {
-			continue
-		}
-		named := count(calls(p.words[i], hints[0].phrases) > 0) + 2*count(a.Name == "gradient_mT_per_m")
-		for axis, take := range map[int]Take{1: Values, 0: Rows} {
-			if n := a.Shape[axis]; (n == 2 || n == 3) && (axis == 1 || a.Shape[1] > 3) {
-				s := FieldSource{Field: "gradient_mT_per_m", Arrays: []string{p.labels[i]}, Take: take, Reason: fmt.Sprintf("%s of shape %s", quoted(a.Name), ShapeText(a.Shape))}
-				consider(choice{source: s, at: []int{i}, shots: a.Shape[1-axis]}, min(named, 2))
-			}
-		}
-	}
-	if lists := p.componentLists(); len(lists) > 1 {
-		s := FieldSource{Field: "gradient_mT_per_m"}
-		shots := 1
-		var names []string
-		for _, i := range lists {
-			s.Arrays = append(s.Arrays, p.labels[i])
-			names = append(names, quoted(p.arrays[i].Name))
-			shots = max(shots, lastLong(p.arrays[i]))
-		}
-		s.Reason = "components " + strings.Join(names, ", ")
-		consider(choice{source: s, at: lists, shots: shots}, 1)
 	}
 	if best.score == 0 {
 		return
 	}
 	p.shots = best.shots
-	best.source.Guessed = p.arrays[best.at[0]].Name != "gradient_mT_per_m"
+	best.source.Guessed = best.named < 2
 	p.unit(&best.source, best.at[0], fieldNamed("gradient_mT_per_m"))
 	p.add(best.source, best.at...)
+}
+
+// gradientTables returns the arrays that have an axis of two or three.
+func (p *proposer) gradientTables() (out []gradientChoice) {
+	for i, a := range p.arrays {
+		if p.taken[i] || a.isText() || a.isComplex() || len(a.Shape) != 2 {
+			continue
+		}
+		named := count(calls(p.words[i], hints[0].phrases) > 0)
+		if a.Name == "gradient_mT_per_m" {
+			named = 2
+		}
+		for axis, take := range []Take{Rows, Values} {
+			// A table of three shots by three components is read as the dictionary has it.
+			if n := a.Shape[axis]; (n == 2 || n == 3) && (axis == 1 || a.Shape[1] > 3) {
+				reason := fmt.Sprintf("%s of shape %s", quoted(a.Name), ShapeText(a.Shape))
+				s := FieldSource{Field: "gradient_mT_per_m", Arrays: []string{p.labels[i]}, Take: take, Reason: reason}
+				out = append(out, gradientChoice{source: s, at: []int{i}, shots: a.Shape[1-axis], named: named})
+			}
+		}
+	}
+	return out
+}
+
+// gradientLists returns the lists of components, when there are two or three.
+func (p *proposer) gradientLists() []gradientChoice {
+	lists := p.componentLists()
+	if len(lists) < 2 {
+		return nil
+	}
+	c := gradientChoice{source: FieldSource{Field: "gradient_mT_per_m"}, at: lists, shots: 1, named: 1}
+	var names []string
+	for _, i := range lists {
+		c.source.Arrays = append(c.source.Arrays, p.labels[i])
+		names = append(names, quoted(p.arrays[i].Name))
+		c.shots = max(c.shots, lastLong(p.arrays[i]))
+	}
+	c.source.Reason = "components " + strings.Join(names, ", ")
+	return []gradientChoice{c}
 }
 
 // lastLong returns the length of the last axis that is longer than 1.

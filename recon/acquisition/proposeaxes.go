@@ -21,7 +21,8 @@ func (p *proposer) delay() {
 		if a.Name == "delay_us" {
 			s += 20
 		}
-		if named == 0 && (n < 2 || !exact || n == p.shots || !rises(a) || calls(p.words[i], axisPhrases) > 0 || n == slices.Max(p.signalShape())) {
+		if named == 0 && (n < 2 || !exact || n == p.shots || !rises(a) || calls(p.words[i], axisPhrases) > 0 ||
+			n == slices.Max(p.signalShape())) {
 			continue
 		}
 		if s > score {
@@ -99,7 +100,8 @@ func (p *proposer) signalAxes() {
 	p.remaining(a.Shape, axes, mark)
 	p.mapping.Signal.Axes = axes
 	// The dictionary states its own order; an array of that name and shape is as stated.
-	own := a.Name == "signal" && (slices.Equal(axes, []string{"delay", "shot", "sample"}) || slices.Equal(axes, []string{"shot", "sample"}))
+	own := a.Name == "signal" && (slices.Equal(axes, []string{"delay", "shot", "sample"}) || slices.Equal(axes,
+		[]string{"shot", "sample"}))
 	p.mapping.Signal.Guessed = !own
 	p.mapping.Signal.Reason = strings.Join(append([]string{p.mapping.Signal.Reason}, why...), "; ")
 }
@@ -168,7 +170,8 @@ func (p *proposer) remaining(shape []int, axes []string, mark func(int, string, 
 		hasShot, hasDelay := slices.Contains(axes, "shot"), slices.Contains(axes, "delay")
 		switch {
 		case !hasShot && !hasDelay && p.delays > 1 && p.shots > 1 && n == p.delays*p.shots:
-			mark(i, "delay shot", fmt.Sprintf("%d delays times %d gradients; which of them runs faster is to be checked", p.delays, p.shots))
+			mark(i, "delay shot",
+				fmt.Sprintf("%d delays times %d gradients; which of them runs faster is to be checked", p.delays, p.shots))
 		case !hasShot && p.shots > 1 && n == 2*p.shots && p.real:
 			mark(i, "shot part", fmt.Sprintf("two for each of %d gradients", p.shots))
 			p.real = false
@@ -206,7 +209,8 @@ func (p *proposer) alongTrace() {
 		if err != nil {
 			continue
 		}
-		reason := fmt.Sprintf("%s rises from %g in even steps of %g along the %d samples", quoted(a.Name), first, step, p.samples)
+		reason := fmt.Sprintf("%s rises from %g in even steps of %g along the %d samples", quoted(a.Name), first, step,
+			p.samples)
 		field := fieldNamed("dwell_ns")
 		if p.real {
 			field = fieldNamed("position_step_mm")
@@ -218,8 +222,9 @@ func (p *proposer) alongTrace() {
 		}
 		zero := -first / step
 		if !slices.ContainsFunc(p.arrays, func(b Array) bool { return b.Name == "time_zero_sample" }) {
-			p.add(FieldSource{Field: "time_zero_sample", Arrays: []string{p.labels[i]}, Take: Zero, Unit: "points", Guessed: true,
-				Reason: fmt.Sprintf("%s is zero at sample %.6g", quoted(a.Name), zero)}, i)
+			p.add(FieldSource{Field: "time_zero_sample", Arrays: []string{p.labels[i]}, Take: Zero, Unit: "points",
+				Guessed: true,
+				Reason:  fmt.Sprintf("%s is zero at sample %.6g", quoted(a.Name), zero)}, i)
 		}
 		return
 	}

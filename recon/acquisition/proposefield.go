@@ -73,7 +73,8 @@ func (p *proposer) byHint(f Field) (FieldSource, bool) {
 	}
 	p.taken[best] = true
 	a := p.arrays[best]
-	s := FieldSource{Field: f.Name, Arrays: []string{p.labels[best]}, Reason: quoted(a.Name) + " sounds like it", Guessed: true}
+	s := FieldSource{Field: f.Name, Arrays: []string{p.labels[best]}, Reason: quoted(a.Name) + " sounds like it",
+		Guessed: true}
 	if a.isText() {
 		return p.fromText(s, f, a), true
 	}
@@ -97,7 +98,8 @@ var sequenceWords = []struct {
 	word     string
 	sequence Sequence
 }{
-	{"inversion", InversionRecovery}, {"saturation", SaturationRecovery}, {"echo-decay", EchoDecay}, {"echo decay", EchoDecay},
+	{"inversion", InversionRecovery}, {"saturation", SaturationRecovery}, {"echo-decay", EchoDecay}, {"echo decay",
+		EchoDecay},
 	{"free", FreeDecay}, {"fid", FreeDecay}, {"t2", EchoDecay}, {"hahn", EchoDecay},
 }
 
@@ -122,7 +124,8 @@ func (p *proposer) fromText(s FieldSource, f Field, a Array) FieldSource {
 		}
 	}
 	s.Guessed = false
-	s.Reason = fmt.Sprintf("%s says %s, which is none of %s; choose one", quoted(a.Name), quoted(text), strings.TrimPrefix(f.Wanted, "text: "))
+	s.Reason = fmt.Sprintf("%s says %s, which is none of %s; choose one", quoted(a.Name), quoted(text),
+		strings.TrimPrefix(f.Wanted, "text: "))
 	return s
 }
 
@@ -163,10 +166,12 @@ func (p *proposer) encoding(s FieldSource) (FieldSource, bool) {
 		distinct += count(strengths[i+1]-strengths[i] > 0.01*most) // gradients are set to a hundredth
 	}
 	if distinct <= 3 {
-		s.Text, s.Reason = string(Spoke), fmt.Sprintf("%d gradients have %d different strengths, as spokes do", len(strengths), distinct)
+		s.Text, s.Reason = string(Spoke), fmt.Sprintf("%d gradients have %d different strengths, as spokes do",
+			len(strengths), distinct)
 		return s, true
 	}
-	s.Text, s.Reason = string(SinglePoint), fmt.Sprintf("%d gradients have %d different strengths, as single points do", len(strengths), distinct)
+	s.Text, s.Reason = string(SinglePoint), fmt.Sprintf("%d gradients have %d different strengths, as single points do",
+		len(strengths), distinct)
 	return s, true
 }
 
@@ -263,7 +268,8 @@ var unitSizes = []struct {
 	unit  string
 }{
 	{"delay_us", 1e-3, "s"}, {"delay_us", 0.3, "ms"}, {"delay_us", 1000, "us"}, {"delay_us", math.Inf(1), "ns"},
-	{"dwell_ns", 1e-7, "s"}, {"dwell_ns", 1e-4, "ms"}, {"dwell_ns", 0.3, "us"}, {"dwell_ns", 5000, "ns"}, {"dwell_ns", math.Inf(1), "Hz"},
+	{"dwell_ns", 1e-7, "s"}, {"dwell_ns", 1e-4, "ms"}, {"dwell_ns", 0.3, "us"}, {"dwell_ns", 5000, "ns"}, {"dwell_ns",
+		math.Inf(1), "Hz"},
 	{"gradient_mT_per_m", 0.3, "T/m"}, {"gradient_mT_per_m", 5, "G/cm"}, {"gradient_mT_per_m", math.Inf(1), "mT/m"},
 	{"carrier_MHz", 50, "GHz"}, {"carrier_MHz", 50_000, "MHz"}, {"carrier_MHz", math.Inf(1), "Hz"},
 	{"temperature_C", 150, "degC"}, {"temperature_C", math.Inf(1), "K"},

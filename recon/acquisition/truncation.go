@@ -122,5 +122,6 @@ func cutSignal(members map[string]Array) []string {
 	if signal.Truncated.Axis >= len(words) {
 		return nil
 	}
-	return shorten(members, axisCut{words[signal.Truncated.Axis], signal.Shape[signal.Truncated.Axis], signal.Truncated.Stated})
+	return shorten(members, axisCut{words[signal.Truncated.Axis], signal.Shape[signal.Truncated.Axis],
+		signal.Truncated.Stated})
 }

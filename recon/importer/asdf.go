@@ -124,7 +124,8 @@ func (a *asdf) compare(v float64) error {
 	// Ordinates are whole numbers or short decimals; their sums in float64 differ by less than this.
 	const rounding = 1e-9
 	if want := a.values[len(a.values)-1]; !(math.Abs(v-want) <= rounding*math.Max(1, math.Abs(want))) {
-		return fault.New(fault.BadFile, "", "the value that checks the line before is %g, its differences add up to %g; the file is damaged or was edited", v, want)
+		return fault.New(fault.BadFile, "",
+			"the value that checks the line before is %g, its differences add up to %g; the file is damaged or was edited", v, want)
 	}
 	return nil
 }

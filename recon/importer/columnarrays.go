@@ -14,7 +14,8 @@ import (
 func (t *table) read() error {
 	one, ok := try(t.dialect, t.sample())
 	if !ok {
-		return fault.New(fault.BadFile, "", "the first lines are no table with %s; choose another delimiter or decimal mark", t.dialect)
+		return fault.New(fault.BadFile, "",
+			"the first lines are no table with %s; choose another delimiter or decimal mark", t.dialect)
 	}
 	var sample [][][]byte
 	for _, line := range t.sample() {
@@ -34,7 +35,8 @@ func (t *table) read() error {
 	for _, line := range t.lines[one.header:] {
 		fields = fieldsOf(line.text, t.dialect.Delimiter, fields)
 		if !fits(fields, one.fields) {
-			return fault.New(fault.BadFile, fmt.Sprintf("line %d", line.number), "%d fields, line %d has %d; the file may be cut short or use another delimiter",
+			return fault.New(fault.BadFile, fmt.Sprintf("line %d", line.number),
+				"%d fields, line %d has %d; the file may be cut short or use another delimiter",
 				len(fields), first, one.fields)
 		}
 		if err := t.takeRow(line.number, fields[:one.fields]); err != nil {
@@ -133,11 +135,13 @@ func (t *table) arrays(file string) ([]acquisition.Array, error) {
 	}
 	out = append(out, stated...)
 	if len(out) > t.limits.Arrays {
-		return nil, fault.New(fault.TooLarge, "", "%d columns with names of their own, the limit is %d", len(out), t.limits.Arrays)
+		return nil, fault.New(fault.TooLarge, "", "%d columns with names of their own, the limit is %d", len(out),
+			t.limits.Arrays)
 	}
 	if t.guess != "" {
 		for i := range out {
-			out[i].Attributes = mergeAttributes(out[i].Attributes, map[string]string{"guess": joinSentences(out[i].Attributes["guess"], t.guess)})
+			out[i].Attributes = mergeAttributes(out[i].Attributes,
+				map[string]string{"guess": joinSentences(out[i].Attributes["guess"], t.guess)})
 		}
 	}
 	return out, nil

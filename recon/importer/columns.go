@@ -41,7 +41,8 @@ var Dialects = []Dialect{
 }
 
 func (d Dialect) String() string {
-	delimiter := map[byte]string{',': "comma", ';': "semicolon", '\t': "tabulator", '|': "bar", ' ': "white space"}[d.Delimiter]
+	delimiter := map[byte]string{',': "comma", ';': "semicolon", '\t': "tabulator", '|': "bar",
+		' ': "white space"}[d.Delimiter]
 	decimal := map[byte]string{'.': "decimal point", ',': "decimal comma"}[d.Decimal]
 	return delimiter + " between fields, " + decimal
 }
@@ -62,7 +63,8 @@ func ReadColumns(limits Limits, name string, data []byte, dialect Dialect) ([]ac
 			return nil, err
 		}
 	} else if !slices.Contains(Dialects, dialect) {
-		return nil, fault.New(fault.BadSetting, "", "delimiter %q with decimal mark %q; use a pair of the list", dialect.Delimiter, dialect.Decimal)
+		return nil, fault.New(fault.BadSetting, "", "delimiter %q with decimal mark %q; use a pair of the list",
+			dialect.Delimiter, dialect.Decimal)
 	}
 	t.dialect = dialect
 	if err := t.read(); err != nil {
@@ -78,7 +80,8 @@ func plainText(data []byte) ([]byte, error) {
 		return bytes.TrimPrefix(data, []byte("\xef\xbb\xbf")), nil
 	}
 	if len(data)%2 != 0 {
-		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)), "ends within a character of two bytes; the file may be cut short")
+		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)),
+			"ends within a character of two bytes; the file may be cut short")
 	}
 	units := make([]uint16, 0, len(data)/2)
 	for at := 2; at < len(data); at += 2 {
@@ -149,7 +152,8 @@ func (t *table) takeComments() {
 	for _, line := range t.lines {
 		text := bytes.TrimSpace(line.text)
 		switch {
-		case text[0] == '#' && !bytes.HasPrefix(bytes.ToLower(text), []byte("#n/a")), text[0] == '%', bytes.HasPrefix(text, []byte("//")):
+		case text[0] == '#' && !bytes.HasPrefix(bytes.ToLower(text),
+			[]byte("#n/a")), text[0] == '%', bytes.HasPrefix(text, []byte("//")):
 			t.comments = append(t.comments, textLine{line.number, bytes.TrimSpace(bytes.TrimLeft(text, "#%/"))})
 		default:
 			rest = append(rest, line)
@@ -218,7 +222,8 @@ func (t *table) detect() (Dialect, string, error) {
 	guess := chosen.thousands(sample)
 	for _, other := range best[1:] {
 		if other.fields != chosen.fields || !slices.EqualFunc(other.first, chosen.first, sameNumber) {
-			guess = fmt.Sprintf("read with %s: %d columns; with %s it would be %d", chosen.dialect, chosen.fields, other.dialect, other.fields)
+			guess = fmt.Sprintf("read with %s: %d columns; with %s it would be %d", chosen.dialect, chosen.fields,
+				other.dialect, other.fields)
 			break
 		}
 	}
@@ -244,7 +249,8 @@ func (t *table) noTable(sample []textLine) error {
 				"no delimiter makes columns of equal number; with a comma this line has %d fields, line %d has %d", n, sample[0].number, len(fieldsOf(sample[0].text, ',', nil)))
 		}
 	}
-	return fault.New(fault.BadFile, fmt.Sprintf("line %d", sample[0].number), "no column of numbers was found; use one delimiter and one decimal mark throughout")
+	return fault.New(fault.BadFile, fmt.Sprintf("line %d", sample[0].number),
+		"no column of numbers was found; use one delimiter and one decimal mark throughout")
 }
 
 // try reads the sample in one dialect. It fits when the lines behind the names have as many fields, some of them numbers.
@@ -273,8 +279,9 @@ func try(d Dialect, sample []textLine) (trial, bool) {
 		one.misfits += count(!one.takes(row, kinds))
 	}
 	// A few lines that do not fit are named when the table is read; of many, this is no table.
-	const most = 4                                                                                 // of so many rows, one
-	return one, one.rows > 0 && most*one.misfits <= one.rows && (one.rows > 1 || one.numeric == n) // a single line may be prose
+	const most = 4 // of so many rows, one
+	return one, one.rows > 0 && most*one.misfits <= one.rows &&
+		(one.rows > 1 || one.numeric == n) // a single line may be prose
 }
 
 // takes tells whether a row fits, and remembers its numbers.

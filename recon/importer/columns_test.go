@@ -99,7 +99,8 @@ func TestWordsForNoNumberAreNaN(t *testing.T) {
 }
 
 func TestUnitsComeFromNamesAndFromARowOfTheirOwn(t *testing.T) {
-	for _, text := range []string{"t [us],v (mV)\n1,2\n2,3\n", "t,v\nus,mV\n1,2\n2,3\n", "t / us,v / mV\n1,2\n2,3\n", "t;v\n[us];[mV]\n1;2\n2;3\n"} {
+	for _, text := range []string{"t [us],v (mV)\n1,2\n2,3\n", "t,v\nus,mV\n1,2\n2,3\n", "t / us,v / mV\n1,2\n2,3\n",
+		"t;v\n[us];[mV]\n1;2\n2;3\n"} {
 		got := readText(t, text)
 		if got["t"].Unit != "us" || got["v"].Unit != "mV" {
 			t.Errorf("%q: units %q, %q", text, got["t"].Unit, got["v"].Unit)
@@ -128,7 +129,8 @@ func TestAFirstColumnInEvenStepsIsAnAxis(t *testing.T) {
 }
 
 func TestCommentsStateValues(t *testing.T) {
-	got := readText(t, "# dwell: 4 ns\n# delay_us = [0.5, 1, 8]\n# sequence = echo-decay\n# written at noon\n# x = 3\nx,y\n1,2\n3,4\n")
+	got := readText(t,
+		"# dwell: 4 ns\n# delay_us = [0.5, 1, 8]\n# sequence = echo-decay\n# written at noon\n# x = 3\nx,y\n1,2\n3,4\n")
 	holds(t, got["dwell"], []int{}, 4)
 	holds(t, got["delay_us"], []int{3}, 0.5, 1, 8)
 	texts, err := got["sequence"].Strings()
@@ -164,7 +166,8 @@ func TestARaggedTableIsAFaultWithLineAndBothNumbers(t *testing.T) {
 }
 
 func TestProseAndCodeAreNoColumns(t *testing.T) {
-	for _, text := range []string{"hello", "{\"recipe\": 1}\n", "<html>\n<p>1</p>\n", "Dear reader,\nthis is 1 line.\nAnd another, of words.\n"} {
+	for _, text := range []string{"hello", "{\"recipe\": 1}\n", "<html>\n<p>1</p>\n",
+		"Dear reader,\nthis is 1 line.\nAnd another, of words.\n"} {
 		if looksLikeColumns([]byte(text)) {
 			t.Errorf("%q was taken for a table", text)
 		}

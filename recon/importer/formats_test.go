@@ -14,8 +14,10 @@ import (
 // typed are the fields that no format of the family but the MAT-files can hold.
 func typed() map[string]acquisition.FieldSource {
 	return map[string]acquisition.FieldSource{
-		"sequence": {Text: "inversion-recovery"}, "encoding": {Text: "spoke"}, "delay_us": {Numbers: []float64{0.5, 1}, Unit: "us"},
-		"temperature_C": {Numbers: []float64{37}, Unit: "degC"}, "note": {Text: "20 µl, pH 7.4"}, "dwell_ns": {Numbers: []float64{250}, Unit: "MHz"},
+		"sequence": {Text: "inversion-recovery"}, "encoding": {Text: "spoke"}, "delay_us": {Numbers: []float64{0.5, 1},
+			Unit: "us"},
+		"temperature_C": {Numbers: []float64{37},
+			Unit: "degC"}, "note": {Text: "20 µl, pH 7.4"}, "dwell_ns": {Numbers: []float64{250}, Unit: "MHz"},
 		"time_zero_sample": {Numbers: []float64{-5}, Unit: "ns"},
 	}
 }
@@ -89,11 +91,12 @@ func TestATableWithoutNamesIsMappedByOneAxisOfThree(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	m := acquisition.Mapping{Signal: acquisition.SignalSource{Array: "*", Axes: []string{"sample", "delay shot part"}}, Fields: []acquisition.FieldSource{
-		{Field: "gradient_mT_per_m", Arrays: []string{"gx", "gy", "gz"}, Unit: "mT/m"},
-		{Field: "dwell_ns", Arrays: []string{"first column"}, Take: acquisition.Step, Unit: "ns"},
-		{Field: "time_zero_sample", Arrays: []string{"first column"}, Take: acquisition.Zero},
-	}}
+	m := acquisition.Mapping{Signal: acquisition.SignalSource{Array: "*", Axes: []string{"sample", "delay shot part"}},
+		Fields: []acquisition.FieldSource{
+			{Field: "gradient_mT_per_m", Arrays: []string{"gx", "gy", "gz"}, Unit: "mT/m"},
+			{Field: "dwell_ns", Arrays: []string{"first column"}, Take: acquisition.Step, Unit: "ns"},
+			{Field: "time_zero_sample", Arrays: []string{"first column"}, Take: acquisition.Zero},
+		}}
 	for name, s := range typed() {
 		if s.Field = name; name != "dwell_ns" && name != "time_zero_sample" {
 			m.Fields = append(m.Fields, s)
@@ -110,7 +113,8 @@ func TestATableWithoutNamesIsMappedByOneAxisOfThree(t *testing.T) {
 // A sinogram is a table of projections, a row for each; the angles make the gradients.
 func TestAPlainSinogramOpens(t *testing.T) {
 	var table, gradients strings.Builder
-	want := &acquisition.Acquisition{Name: "sinogram", Delays: 1, Shots: 4, Samples: 5, Dim: 2, DelayUS: []float64{8}, TimeZeroSample: 2, PositionStepMM: 0.5,
+	want := &acquisition.Acquisition{Name: "sinogram", Delays: 1, Shots: 4, Samples: 5, Dim: 2, DelayUS: []float64{8},
+		TimeZeroSample: 2, PositionStepMM: 0.5,
 		Sequence: acquisition.InversionRecovery, Encoding: acquisition.Spoke, Domain: acquisition.Projection, ShotRole: make([]int, 4)}
 	for s := range 4 {
 		g := [3]float64{float64(3 - s), float64(4 * s), 0}
@@ -123,7 +127,8 @@ func TestAPlainSinogramOpens(t *testing.T) {
 		table.WriteString("\n")
 		fmt.Fprintf(&gradients, "%g,%g\n", g[0], g[1])
 	}
-	tree, err := ReadSet([]File{{"sinogram.csv", []byte(table.String())}, {"gradient.csv", []byte("gx,gy\n" + gradients.String())}})
+	tree, err := ReadSet([]File{{"sinogram.csv", []byte(table.String())},
+		{"gradient.csv", []byte("gx,gy\n" + gradients.String())}})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -194,7 +199,8 @@ func wholeRows(t *testing.T, file string, a acquisition.Array, whole *acquisitio
 		for s := range n[1] {
 			for j := range n[2] {
 				if got := values[(d*n[1]+s)*n[2]+j]; got != whole.Trace(d, s)[j] {
-					t.Fatalf("%s: %v at delay %d shot %d sample %d of %v, want %v", file, got, d, s, j, n, whole.Trace(d, s)[j])
+					t.Fatalf("%s: %v at delay %d shot %d sample %d of %v, want %v", file, got, d, s, j, n,
+						whole.Trace(d, s)[j])
 				}
 			}
 		}
@@ -203,12 +209,14 @@ func wholeRows(t *testing.T, file string, a acquisition.Array, whole *acquisitio
 
 func TestSalvagedColumnsAndArrays(t *testing.T) {
 	s, err := Salvage(Default, "x.csv", []byte("re,im\n1,2\n3,4\n5,"))
-	if err != nil || len(s.Arrays) != 2 || s.Arrays[0].Truncated == nil || s.Arrays[0].Len() != 2 || !strings.Contains(s.Text, `of "re" 2 entries along axis 1`) {
+	if err != nil || len(s.Arrays) != 2 || s.Arrays[0].Truncated == nil || s.Arrays[0].Len() != 2 ||
+		!strings.Contains(s.Text, `of "re" 2 entries along axis 1`) {
 		t.Errorf("%+v, %v", s, err)
 	}
 	whole := npyOf("<f8", "(4, 2)", make([]byte, 64))
 	s, err = Salvage(Default, "x.npy", whole[:len(whole)-17])
-	if err != nil || s.Arrays[0].Shape[0] != 2 || s.Arrays[0].Truncated.Stated != 4 || !strings.Contains(s.Text, "2 of 4 entries along axis 1") {
+	if err != nil || s.Arrays[0].Shape[0] != 2 || s.Arrays[0].Truncated.Stated != 4 ||
+		!strings.Contains(s.Text, "2 of 4 entries along axis 1") {
 		t.Errorf("%+v, %v", s, err)
 	}
 	_, err = Salvage(Default, "x.nii", load(t, filepath.Join(testdata, "malformed/cut-short.nii")))

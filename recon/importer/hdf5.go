@@ -18,7 +18,8 @@ var hdf5 = Format{
 				return true
 			}
 		}
-		return len(head) >= matHeaderBytes && (string(head[124:128]) == "\x00\x02IM" || string(head[124:128]) == "\x02\x00MI")
+		return len(head) >= matHeaderBytes && (string(head[124:128]) == "\x00\x02IM" ||
+			string(head[124:128]) == "\x02\x00MI")
 	},
 	Read: func(string, []byte, Limits) ([]acquisition.Array, error) {
 		return nil, fault.New(fault.Unsupported, "",

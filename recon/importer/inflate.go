@@ -82,7 +82,8 @@ func (m *matFile) inflate(e matElement) (matElement, error) {
 }
 
 func notInflated(e matElement, err error) error {
-	return fault.New(fault.BadFile, e.at.String(), "a compressed variable of %d bytes does not unpack (%v); the file may be cut short or damaged", len(e.data), err)
+	return fault.New(fault.BadFile, e.at.String(),
+		"a compressed variable of %d bytes does not unpack (%v); the file may be cut short or damaged", len(e.data), err)
 }
 
 // readExactly returns n bytes. They are asked for at once only when the packed bytes make them likely.

@@ -106,7 +106,8 @@ func readJCAMP(_ string, data []byte, limits Limits) ([]acquisition.Array, error
 		}
 	}
 	if len(read) == 0 {
-		return nil, fault.New(fault.BadFile, "", "no data among %d blocks; ##XYDATA, ##XYPOINTS or ##NTUPLES wanted", len(blocks))
+		return nil, fault.New(fault.BadFile, "", "no data among %d blocks; ##XYDATA, ##XYPOINTS or ##NTUPLES wanted",
+			len(blocks))
 	}
 	if len(read) > 1 {
 		if joined, err := join(read); err == nil {
@@ -129,11 +130,13 @@ func blocksOf(all []record, limits Limits) (out []block, err error) {
 		switch {
 		case r.label == "TITLE":
 			if len(open) >= limits.Nesting {
-				return nil, fault.New(fault.TooLarge, fmt.Sprintf("line %d", r.line), "blocks nested more than %d deep", limits.Nesting)
+				return nil, fault.New(fault.TooLarge, fmt.Sprintf("line %d", r.line), "blocks nested more than %d deep",
+					limits.Nesting)
 			}
 			open = append(open, block{})
 		case len(open) == 0:
-			return nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line), "##%s outside of a block; a block begins with ##TITLE=", r.name)
+			return nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line),
+				"##%s outside of a block; a block begins with ##TITLE=", r.name)
 		}
 		if r.label == "END" {
 			last := open[len(open)-1]

@@ -33,7 +33,8 @@ func TestThePublishedLineInEveryPacking(t *testing.T) {
 		signed += "+" + text
 	}
 	for form, lines := range map[string][]string{
-		"AFFN": {"599.860 " + plain}, "PAC": {"599.860" + signed}, "SQZ": {"599.860" + squeezed}, "DIF and DUP": {line, "700.158A28"},
+		"AFFN": {"599.860 " + plain}, "PAC": {"599.860" + signed}, "SQZ": {"599.860" + squeezed}, "DIF and DUP": {line,
+			"700.158A28"},
 	} {
 		var numbered []textLine
 		for i, text := range lines {
@@ -198,7 +199,8 @@ func TestRealAndImaginaryPagesAndUserLabels(t *testing.T) {
 	texts, err := arrays[got["SEQUENCE"]].Strings()
 	real := arrays[got["real"]]
 	if err != nil || texts[0] != "inversion-recovery" || len(arrays) != 7 || arrays[got["DWELL"]].Unit != "ns" ||
-		real.Attributes[".MICROWAVE FREQUENCY"] != "721.5" || real.Attributes["$GX"] != "110" || real.Attributes["TITLE"] != "shot 11" {
+		real.Attributes[".MICROWAVE FREQUENCY"] != "721.5" || real.Attributes["$GX"] != "110" ||
+		real.Attributes["TITLE"] != "shot 11" {
 		t.Errorf("%+v", arrays)
 	}
 }
@@ -254,7 +256,8 @@ func TestJCAMPLimits(t *testing.T) {
 	tooLarge(t, "x.dx", []byte(spectrum(101, "1A0S01")), small)
 	tooLarge(t, "x.dx", []byte(spectrum(101, "1A0S999999999999999999")), Default) // past 200 values for each byte
 	nested := func(n int) []byte {
-		return []byte(strings.Repeat("##TITLE= x\n##DATA TYPE= LINK\n", n-1) + spectrum(1, "1 1") + strings.Repeat("##END=\n", n-1))
+		return []byte(strings.Repeat("##TITLE= x\n##DATA TYPE= LINK\n", n-1) + spectrum(1,
+			"1 1") + strings.Repeat("##END=\n", n-1))
 	}
 	reads(t, "x.dx", nested(32), Default)
 	tooLarge(t, "x.dx", nested(33), Default)

@@ -18,7 +18,6 @@ type curve struct {
 	xFactor, yFactor float64
 	first, last      float64
 	points           float64
-	page             string // "T=0.5" of NTUPLES
 }
 
 // arrays returns the tables of a block, its user-defined labels, and its other labels as attributes.
@@ -157,13 +156,15 @@ func (b block) table(c curve, r record) (x, y []float64, doubt string, err error
 	case pairedForm.MatchString(r.value):
 		x, y, err = pairs(c, r, b.most)
 	default:
-		return nil, nil, "", fault.New(fault.Unsupported, where, "##%s in the form %q; (X++(Y..Y)) and (XY..XY) are read", r.name, r.value[:min(len(r.value), 40)])
+		return nil, nil, "", fault.New(fault.Unsupported, where,
+			"##%s in the form %q; (X++(Y..Y)) and (XY..XY) are read", r.name, r.value[:min(len(r.value), 40)])
 	}
 	if err != nil {
 		return nil, nil, "", err
 	}
 	if n := c.points; n == n && n != float64(len(y)) {
-		return nil, nil, "", fault.New(fault.BadFile, where, "%d values in a table of %g points; the file may be cut short", len(y), n)
+		return nil, nil, "", fault.New(fault.BadFile, where,
+			"%d values in a table of %g points; the file may be cut short", len(y), n)
 	}
 	return x, y, doubt, nil
 }
@@ -221,7 +222,8 @@ func pairs(c curve, r record, most int) (x, y []float64, err error) {
 		for _, field := range bytes.FieldsFunc(line.text, func(r rune) bool { return strings.ContainsRune(" \t,;", r) }) {
 			v, _, ok := parseNumber(field, '.')
 			if !ok {
-				return nil, nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", line.number), "%q is no number", field[:min(len(field), 20)])
+				return nil, nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", line.number), "%q is no number",
+					field[:min(len(field), 20)])
 			}
 			if len(x)+len(y) >= most {
 				return nil, nil, fault.New(fault.TooLarge, fmt.Sprintf("line %d", line.number), "more than %d values", most)
@@ -234,7 +236,8 @@ func pairs(c curve, r record, most int) (x, y []float64, err error) {
 		}
 	}
 	if len(x) != len(y) {
-		return nil, nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line), "%d abscissae and %d ordinates", len(x), len(y))
+		return nil, nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line), "%d abscissae and %d ordinates",
+			len(x), len(y))
 	}
 	return x, y, nil
 }

@@ -10,13 +10,18 @@ import (
 	"torrloom/recon/fault"
 )
 
+// pages are the data tables of NTUPLES by ordinate.
+type pages struct {
+	x      acquisition.Array
+	order  []string // names of ordinates
+	arrays map[string][]acquisition.Array
+	places map[string][]string // the value of the page label before each
+}
+
 // tuples returns the pages of NTUPLES. Pages of one ordinate are put together, with a leading axis for the page, and the
 // values of the page variable stand in an array of its name.
 func (b block) tuples() ([]acquisition.Array, error) {
-	var order []string
-	pages := map[string][]acquisition.Array{}
-	places := map[string][]string{}
-	var x acquisition.Array
+	p := pages{arrays: map[string][]acquisition.Array{}, places: map[string][]string{}}
 	place := ""
 	for _, r := range b.records {
 		if r.label == "PAGE" {
@@ -25,43 +30,53 @@ func (b block) tuples() ([]acquisition.Array, error) {
 		if r.label != "DATATABLE" {
 			continue
 		}
-		c, err := b.variable(r)
+		n, err := b.page(&p, r, place)
 		if err != nil {
 			return nil, err
 		}
-		xs, ys, doubt, err := b.table(c, r)
-		if err != nil {
-			return nil, err
-		}
-		b.most -= len(xs)
-		both, err := arraysOf(c, xs, ys, doubt)
-		if err != nil {
-			return nil, err
-		}
-		if len(order) == 0 {
-			x = both[0]
-		}
-		if !slices.Equal(x.Raw(), both[0].Raw()) {
-			return nil, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line), "page %q runs over other abscissae than the first page", place)
-		}
-		if !slices.Contains(order, c.y) {
-			order = append(order, c.y)
-		}
-		pages[c.y] = append(pages[c.y], both[1])
-		places[c.y] = append(places[c.y], place)
+		b.most -= n
 	}
-	if len(order) == 0 {
+	if len(p.order) == 0 {
 		return nil, nil
 	}
-	return b.stackPages(x, order, pages, places)
+	return b.stackPages(p)
 }
 
-func (b block) stackPages(x acquisition.Array, order []string, pages map[string][]acquisition.Array, places map[string][]string) ([]acquisition.Array, error) {
-	out := []acquisition.Array{x}
-	for _, name := range order {
-		array := pages[name][0]
-		if n := len(pages[name]); n > 1 {
-			stacked, err := acquisition.Stack(name, []int{n}, pages[name])
+// page adds one data table to p and returns how many values it has.
+func (b block) page(p *pages, r record, place string) (int, error) {
+	c, err := b.variable(r)
+	if err != nil {
+		return 0, err
+	}
+	xs, ys, doubt, err := b.table(c, r)
+	if err != nil {
+		return 0, err
+	}
+	both, err := arraysOf(c, xs, ys, doubt)
+	if err != nil {
+		return 0, err
+	}
+	if len(p.order) == 0 {
+		p.x = both[0]
+	}
+	if !slices.Equal(p.x.Raw(), both[0].Raw()) {
+		return 0, fault.New(fault.BadFile, fmt.Sprintf("line %d", r.line),
+			"page %q runs over other abscissae than the first page", place)
+	}
+	if !slices.Contains(p.order, c.y) {
+		p.order = append(p.order, c.y)
+	}
+	p.arrays[c.y] = append(p.arrays[c.y], both[1])
+	p.places[c.y] = append(p.places[c.y], place)
+	return len(xs), nil
+}
+
+func (b block) stackPages(p pages) ([]acquisition.Array, error) {
+	out := []acquisition.Array{p.x}
+	for _, name := range p.order {
+		array := p.arrays[name][0]
+		if n := len(p.arrays[name]); n > 1 {
+			stacked, err := acquisition.Stack(name, []int{n}, p.arrays[name])
 			if err != nil {
 				return nil, err
 			}
@@ -69,7 +84,7 @@ func (b block) stackPages(x acquisition.Array, order []string, pages map[string]
 		}
 		out = append(out, array)
 	}
-	first := places[order[0]]
+	first := p.places[p.order[0]]
 	if len(first) < 2 {
 		return out, nil
 	}
@@ -113,12 +128,14 @@ func (b block) variable(r record) (curve, error) {
 		form = pairedForm.FindStringSubmatch(r.value)
 	}
 	if form == nil {
-		return curve{}, fault.New(fault.Unsupported, fmt.Sprintf("line %d", r.line), "a data table in the form %q; (X++(Y..Y)) and (XY..XY) are read",
+		return curve{}, fault.New(fault.Unsupported, fmt.Sprintf("line %d", r.line),
+			"a data table in the form %q; (X++(Y..Y)) and (XY..XY) are read",
 			r.value[:min(len(r.value), 40)])
 	}
 	x, y := form[1], form[2]
 	c := curve{x: x, y: y, xUnit: b.entry("UNITS", x), yUnit: b.entry("UNITS", y), xFactor: numberIn(b.entry("FACTOR", x)),
-		yFactor: numberIn(b.entry("FACTOR", y)), first: numberIn(b.entry("FIRST", x)), last: numberIn(b.entry("LAST", x)), points: numberIn(b.entry("VARDIM", y))}
+		yFactor: numberIn(b.entry("FACTOR", y)), first: numberIn(b.entry("FIRST", x)), last: numberIn(b.entry("LAST",
+			x)), points: numberIn(b.entry("VARDIM", y))}
 	for _, factor := range []*float64{&c.xFactor, &c.yFactor} {
 		if math.IsNaN(*factor) {
 			*factor = 1

@@ -34,12 +34,14 @@ func words32(values ...uint32) (out []byte) {
 
 // variable returns an array of bytes as class uint8.
 func variable(name string, body []byte, shape ...uint32) []byte {
-	return mi(miMATRIX, append(append(append(mi(miUINT32, words32(9, 0)), mi(miINT32, words32(shape...))...), mi(miINT8, []byte(name))...), mi(miUINT8, body)...))
+	return mi(miMATRIX, append(append(append(mi(miUINT32, words32(9, 0)), mi(miINT32, words32(shape...))...), mi(miINT8,
+		[]byte(name))...), mi(miUINT8, body)...))
 }
 
 // cells returns a cell of the given variables.
 func cells(name string, inner ...[]byte) []byte {
-	body := append(append(mi(miUINT32, words32(mxCELL, 0)), mi(miINT32, words32(uint32(len(inner)), 1))...), mi(miINT8, []byte(name))...)
+	body := append(append(mi(miUINT32, words32(mxCELL, 0)), mi(miINT32, words32(uint32(len(inner)), 1))...),
+		mi(miINT8, []byte(name))...)
 	for _, v := range inner {
 		body = append(body, v...)
 	}
@@ -82,7 +84,8 @@ func TestMATLimits(t *testing.T) {
 // A sparse matrix may not take more memory than its bytes justify.
 func TestSparseMatrixLimit(t *testing.T) {
 	sparse := func(rows uint32) []byte {
-		body := append(append(mi(miUINT32, words32(mxSPARSE, 1)), mi(miINT32, words32(rows, 1))...), mi(miINT8, []byte("s"))...)
+		body := append(append(mi(miUINT32, words32(mxSPARSE, 1)), mi(miINT32, words32(rows, 1))...),
+			mi(miINT8, []byte("s"))...)
 		body = append(append(body, mi(miINT32, words32(0))...), mi(miINT32, words32(0, 1))...)
 		return mat5(mi(miMATRIX, append(body, mi(miUINT8, []byte{5})...)))
 	}
@@ -121,7 +124,8 @@ func TestNIfTILimits(t *testing.T) {
 
 func TestHDF5IsToldApartWithAWayAround(t *testing.T) {
 	signature := "\x89HDF\r\n\x1a\n"
-	for _, data := range []string{signature, strings.Repeat("\x00", 512) + signature, strings.Repeat("\x00", 2048) + signature, strings.Repeat(" ", 124) + "\x00\x02IM"} {
+	for _, data := range []string{signature, strings.Repeat("\x00", 512) + signature,
+		strings.Repeat("\x00", 2048) + signature, strings.Repeat(" ", 124) + "\x00\x02IM"} {
 		_, err := Read("x.mat", []byte(data))
 		f := wantFault(t, err, fault.Unsupported)
 		if !strings.Contains(f.Text, "HDF5") || !strings.Contains(f.Text, "-v7") {

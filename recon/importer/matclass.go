@@ -160,7 +160,8 @@ func (m *matFile) structs(p *parts, h matArray, depth int) error {
 	length := p.ints("length of field names")
 	names := p.next("field names", miINT8, miUINT8)
 	if p.err == nil && (len(length) != 1 || length[0] < 1 || len(names.data)%length[0] != 0) {
-		p.err = fault.New(fault.BadFile, names.at.within(p.name), "%d bytes of field names, each %v long", len(names.data), length)
+		p.err = fault.New(fault.BadFile, names.at.within(p.name), "%d bytes of field names, each %v long",
+			len(names.data), length)
 	}
 	if p.err != nil {
 		return p.err
@@ -334,7 +335,8 @@ type sparseMatrix struct {
 
 func (m *matFile) dense(name string, h matArray, s sparseMatrix) error {
 	if len(h.shape) != 2 || len(s.begins) != h.shape[1]+1 {
-		return fault.New(fault.BadFile, name, "sparse matrix of shape %s lists %d columns", acquisition.ShapeText(h.shape), len(s.begins)-1)
+		return fault.New(fault.BadFile, name, "sparse matrix of shape %s lists %d columns",
+			acquisition.ShapeText(h.shape), len(s.begins)-1)
 	}
 	layout := acquisition.Layout{Kind: acquisition.Float, Size: 8, FirstAxisFastest: true}
 	switch {
@@ -351,7 +353,8 @@ func (m *matFile) dense(name string, h matArray, s sparseMatrix) error {
 	for c := range h.shape[1] {
 		for i := s.begins[c]; i < s.begins[c+1]; i++ {
 			if i >= len(s.rows) || i >= len(s.real) || h.complex && i >= len(s.imaginary) || s.rows[i] >= h.shape[0] {
-				return fault.New(fault.BadFile, name, "value %d of a sparse matrix of shape %s is not there or lies outside", i, acquisition.ShapeText(h.shape))
+				return fault.New(fault.BadFile, name,
+					"value %d of a sparse matrix of shape %s is not there or lies outside", i, acquisition.ShapeText(h.shape))
 			}
 			put(raw[(c*h.shape[0]+s.rows[i])*layout.Size:], layout, s.real[i])
 			if h.complex {
@@ -382,7 +385,8 @@ func (m *matFile) chars(p *parts, shape []int) error {
 	}
 	count := elements(shape[:last])
 	if len(runes) != count*shape[last] {
-		return fault.New(fault.BadFile, e.at.within(p.name), "%d characters for shape %s", len(runes), acquisition.ShapeText(shape))
+		return fault.New(fault.BadFile, e.at.within(p.name), "%d characters for shape %s", len(runes),
+			acquisition.ShapeText(shape))
 	}
 	texts := make([]string, count)
 	for i := range texts {

@@ -48,14 +48,14 @@ type mat4Header struct {
 	complex       bool
 	name          string
 	start         int // of the values
-	bytes         int64
 }
 
 // parseMAT4 reads the header that begins at data[at]. A name of NULs is returned empty.
 func parseMAT4(data []byte, at int) (h mat4Header, err error) {
 	where := fmt.Sprintf("byte %d", at)
 	if len(data)-at < mat4HeaderBytes {
-		return h, fault.New(fault.BadFile, where, "%d bytes are left, the header of a matrix takes %d; the file may be cut short", len(data)-at, mat4HeaderBytes)
+		return h, fault.New(fault.BadFile, where,
+			"%d bytes are left, the header of a matrix takes %d; the file may be cut short", len(data)-at, mat4HeaderBytes)
 	}
 	var order binary.ByteOrder = binary.LittleEndian
 	const orders = 1000 // weight of the digit that tells the byte order
@@ -65,7 +65,8 @@ func parseMAT4(data []byte, at int) (h mat4Header, err error) {
 	word := int(order.Uint32(data[at:]))
 	m, o, p, t := word/orders, word/100%10, word/10%10, word%10
 	if m > 1 || o != 0 || p >= len(mat4Number) || t > mat4Sparse || (m == 1) != h.big {
-		return h, fault.New(fault.BadFile, where, "type %d; little- or big-endian numbers, text or sparse matrices wanted", word)
+		return h, fault.New(fault.BadFile, where,
+			"type %d; little- or big-endian numbers, text or sparse matrices wanted", word)
 	}
 	h.layout, h.what = mat4Number[p], t
 	h.layout.BigEndian = h.big && h.layout.Size > 1
@@ -75,8 +76,10 @@ func parseMAT4(data []byte, at int) (h mat4Header, err error) {
 		words[i] = int64(int32(order.Uint32(data[at+4+4*i:])))
 	}
 	name := words[3]
-	if words[0] < 0 || words[1] < 0 || words[2] < 0 || words[2] > 1 || name < 1 || name > mat4NameBytes || at+mat4HeaderBytes+int(name) > len(data) {
-		return h, fault.New(fault.BadFile, where, "%d rows, %d columns, complex %d, name of %d bytes; this is no header of a matrix", words[0], words[1], words[2], name)
+	if words[0] < 0 || words[1] < 0 || words[2] < 0 || words[2] > 1 || name < 1 || name > mat4NameBytes ||
+		at+mat4HeaderBytes+int(name) > len(data) {
+		return h, fault.New(fault.BadFile, where,
+			"%d rows, %d columns, complex %d, name of %d bytes; this is no header of a matrix", words[0], words[1], words[2], name)
 	}
 	h.rows, h.columns, h.complex = int(words[0]), int(words[1]), words[2] == 1
 	text := data[at+mat4HeaderBytes : at+mat4HeaderBytes+int(name)]
@@ -105,7 +108,8 @@ func walkMAT4(data []byte, limits Limits) ([]acquisition.Array, error) {
 			return arrays, err
 		}
 		if len(arrays) >= limits.Arrays {
-			return arrays, fault.New(fault.TooLarge, "", "more than %d arrays; save them in fewer, larger ones", limits.Arrays)
+			return arrays, fault.New(fault.TooLarge, "", "more than %d arrays; save them in fewer, larger ones",
+				limits.Arrays)
 		}
 		if err := limits.checkShape([]int{h.rows, h.columns}); err != nil {
 			return arrays, fault.Within(h.name, err)
@@ -152,7 +156,8 @@ func (h mat4Header) read(data []byte, limits Limits) (acquisition.Array, int, er
 // pair joins real parts with the imaginary ones, which stand behind all of them.
 func (h mat4Header) pair(real acquisition.Array, imaginary []byte) (acquisition.Array, error) {
 	size := h.layout.Size
-	part, whole := acquisition.Layout{Kind: acquisition.Float, Size: 8}, acquisition.Layout{Kind: acquisition.Complex, Size: 16}
+	part, whole := acquisition.Layout{Kind: acquisition.Float, Size: 8}, acquisition.Layout{Kind: acquisition.Complex,
+		Size: 16}
 	raw := make([]byte, 0, 2*8*h.rows*h.columns)
 	flat := func(b []byte) ([]float64, error) {
 		a, err := acquisition.NewArray(h.name, []int{len(b) / size}, h.layout, b)
@@ -201,7 +206,8 @@ func (h mat4Header) sparse(table acquisition.Array, bytes int64, limits Limits) 
 	v, err := table.Float64s()
 	columns := h.columns
 	if err != nil || h.rows < 1 || columns != 3 && columns != 4 {
-		return table, fault.New(fault.BadFile, "", "a sparse matrix as a table of %d rows and %d columns; 3 columns are wanted, 4 for complex values", h.rows, columns)
+		return table, fault.New(fault.BadFile, "",
+			"a sparse matrix as a table of %d rows and %d columns; 3 columns are wanted, 4 for complex values", h.rows, columns)
 	}
 	lengths := v[(h.rows-1)*columns:]
 	if !(lengths[0] >= 0 && lengths[1] >= 0 && lengths[0] <= math.MaxInt32 && lengths[1] <= math.MaxInt32) {
@@ -223,7 +229,8 @@ func (h mat4Header) sparse(table acquisition.Array, bytes int64, limits Limits) 
 		entry := v[i*columns:]
 		r, c := entry[0]-1, entry[1]-1
 		if !(r >= 0 && c >= 0 && r < lengths[0] && c < lengths[1]) {
-			return table, fault.New(fault.BadFile, "", "value %d of a sparse matrix of shape %s lies at row %g, column %g", i, acquisition.ShapeText(shape), r+1, c+1)
+			return table, fault.New(fault.BadFile, "",
+				"value %d of a sparse matrix of shape %s lies at row %g, column %g", i, acquisition.ShapeText(shape), r+1, c+1)
 		}
 		at := raw[(int(c)*shape[0]+int(r))*layout.Size:]
 		put(at, layout, entry[2])

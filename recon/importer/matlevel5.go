@@ -18,7 +18,8 @@ var matLevel5 = Format{
 	Name:       "MAT-file, level 5",
 	Extensions: []string{".mat"},
 	Recognise: func(head []byte) bool {
-		return len(head) >= matHeaderBytes && (string(head[124:128]) == "\x00\x01IM" || string(head[124:128]) == "\x01\x00MI")
+		return len(head) >= matHeaderBytes && (string(head[124:128]) == "\x00\x01IM" ||
+			string(head[124:128]) == "\x01\x00MI")
 	},
 	Read: func(_ string, data []byte, limits Limits) ([]acquisition.Array, error) {
 		arrays, err := walkMAT(data, limits)
@@ -104,7 +105,8 @@ func walkMAT(data []byte, limits Limits) ([]acquisition.Array, error) {
 // walk returns what stands before a fault too.
 func (m *matFile) walk(data []byte) ([]acquisition.Array, error) {
 	if len(data) < matHeaderBytes {
-		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)), "ends within the header of %d bytes; the file may be cut short", matHeaderBytes)
+		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)),
+			"ends within the header of %d bytes; the file may be cut short", matHeaderBytes)
 	}
 	m.order, m.bytes = binary.LittleEndian, int64(len(data))
 	if string(data[126:128]) == "MI" {
@@ -139,7 +141,8 @@ func (m *matFile) variable(e matElement) error {
 	case miMATRIX:
 		return m.matrix("", e, 0)
 	}
-	return fault.New(fault.BadFile, e.at.String(), "element of type %d where a variable (14 or 15) should begin; the file may be damaged", e.kind)
+	return fault.New(fault.BadFile, e.at.String(),
+		"element of type %d where a variable (14 or 15) should begin; the file may be damaged", e.kind)
 }
 
 // element returns the element that begins at data[at] and where the next begins. Inside a variable, elements are filled
@@ -148,13 +151,15 @@ func (m *matFile) element(data []byte, at int, from place, padded bool) (matElem
 	const tag = 8
 	where := place{from.prefix, from.offset + at}
 	if len(data)-at < tag {
-		return matElement{}, 0, fault.New(fault.BadFile, where.String(), "%d bytes are left, the tag of an element takes %d; the file may be cut short", len(data)-at, tag)
+		return matElement{}, 0, fault.New(fault.BadFile, where.String(),
+			"%d bytes are left, the tag of an element takes %d; the file may be cut short", len(data)-at, tag)
 	}
 	kind, n := m.order.Uint32(data[at:]), int64(m.order.Uint32(data[at+4:]))
 	start := at + tag
 	if small := kind >> 16; small != 0 {
 		if small > 4 {
-			return matElement{}, 0, fault.New(fault.BadFile, where.String(), "a small element states %d bytes, it holds 4 at most", small)
+			return matElement{}, 0, fault.New(fault.BadFile, where.String(),
+				"a small element states %d bytes, it holds 4 at most", small)
 		}
 		return matElement{kind & 0xffff, data[at+4 : at+4+int(small)], where.plus(4), false}, start, nil
 	}
@@ -162,7 +167,8 @@ func (m *matFile) element(data []byte, at int, from place, padded bool) (matElem
 		if m.salvage {
 			return matElement{kind, data[start:], where.plus(tag), true}, len(data), nil
 		}
-		return matElement{}, 0, fault.New(fault.BadFile, where.String(), "an element of %d bytes, %d are left; the file may be cut short", n, len(data)-start)
+		return matElement{}, 0, fault.New(fault.BadFile, where.String(),
+			"an element of %d bytes, %d are left; the file may be cut short", n, len(data)-start)
 	}
 	end := start + int(n)
 	next := end
@@ -210,7 +216,8 @@ func (p *parts) next(what string, kinds ...uint32) matElement {
 			return element
 		}
 	}
-	p.err = fault.New(fault.BadFile, here, "element of type %d where %s is wanted; the file may be damaged", element.kind, what)
+	p.err = fault.New(fault.BadFile, here, "element of type %d where %s is wanted; the file may be damaged",
+		element.kind, what)
 	return matElement{}
 }
 

@@ -19,7 +19,8 @@ var nifti = Format{
 	Name:       "NIfTI-1 volume",
 	Extensions: []string{".nii", ".nii.gz"},
 	Recognise: func(head []byte) bool {
-		return len(head) >= 8 && niftiOrder(head) != nil || bytes.HasPrefix(head[min(4, len(head)):], []byte("n+2\x00\r\n\x1a\n"))
+		return len(head) >= 8 && niftiOrder(head) != nil ||
+			bytes.HasPrefix(head[min(4, len(head)):], []byte("n+2\x00\r\n\x1a\n"))
 	},
 	Read: readNIfTI,
 }
@@ -47,9 +48,11 @@ const (
 // niftiLayout is what a datatype code stands for, of those that are read.
 var niftiLayout = map[int16]acquisition.Layout{
 	2: {Kind: acquisition.Uint, Size: 1}, 4: {Kind: acquisition.Int, Size: 2}, 8: {Kind: acquisition.Int, Size: 4},
-	16: {Kind: acquisition.Float, Size: 4}, 32: {Kind: acquisition.Complex, Size: 8}, 64: {Kind: acquisition.Float, Size: 8},
+	16: {Kind: acquisition.Float, Size: 4}, 32: {Kind: acquisition.Complex, Size: 8}, 64: {Kind: acquisition.Float,
+		Size: 8},
 	256: {Kind: acquisition.Int, Size: 1}, 512: {Kind: acquisition.Uint, Size: 2}, 768: {Kind: acquisition.Uint, Size: 4},
-	1024: {Kind: acquisition.Int, Size: 8}, 1280: {Kind: acquisition.Uint, Size: 8}, 1792: {Kind: acquisition.Complex, Size: 16},
+	1024: {Kind: acquisition.Int, Size: 8}, 1280: {Kind: acquisition.Uint, Size: 8}, 1792: {Kind: acquisition.Complex,
+		Size: 16},
 }
 
 // niftiMM is the length in mm of a unit of space by its code.
@@ -87,15 +90,18 @@ func readNIfTI(name string, data []byte, limits Limits) ([]acquisition.Array, er
 		return nil, fault.New(fault.Unsupported, "", "a NIfTI-2 volume; save it as NIfTI-1")
 	}
 	if len(data) < niftiHeaderBytes {
-		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)), "ends within the header of %d bytes; the file may be cut short", niftiHeaderBytes)
+		return nil, fault.New(fault.BadFile, fmt.Sprintf("byte %d", len(data)),
+			"ends within the header of %d bytes; the file may be cut short", niftiHeaderBytes)
 	}
 	f := niftiFile{order, data[:niftiHeaderBytes]}
 	switch magic := string(data[niftiMagic : niftiMagic+4]); magic {
 	case "n+1\x00":
 	case "ni1\x00":
-		return nil, fault.New(fault.Unsupported, "", "the header of a volume in two files (.hdr and .img); save it as a single file (.nii)")
+		return nil, fault.New(fault.Unsupported, "",
+			"the header of a volume in two files (.hdr and .img); save it as a single file (.nii)")
 	default:
-		return nil, fault.New(fault.Unsupported, "byte 344", "%q found, \"n+1\" wanted; this may be an ANALYZE header, save it as NIfTI-1", magic)
+		return nil, fault.New(fault.Unsupported, "byte 344",
+			"%q found, \"n+1\" wanted; this may be an ANALYZE header, save it as NIfTI-1", magic)
 	}
 	volume, err := f.volume(data, limits)
 	if err != nil {
@@ -144,7 +150,8 @@ func (f niftiFile) volume(data []byte, limits Limits) (acquisition.Array, error)
 	code := f.short(niftiDatatype)
 	layout, known := niftiLayout[code]
 	if !known {
-		return none, fault.New(fault.Unsupported, "byte 70", "datatype %d; integers, floats and complex numbers of up to 64 bits each are read", code)
+		return none, fault.New(fault.Unsupported, "byte 70",
+			"datatype %d; integers, floats and complex numbers of up to 64 bits each are read", code)
 	}
 	shape, err := f.shape(limits)
 	if err != nil {
@@ -153,7 +160,8 @@ func (f niftiFile) volume(data []byte, limits Limits) (acquisition.Array, error)
 	offset := f.float(niftiVoxOffset)
 	const least = niftiHeaderBytes + 4 // the four bytes that announce extensions
 	if !(offset >= least && offset <= float64(len(data))) || offset != math.Trunc(offset) {
-		return none, fault.New(fault.BadFile, "byte 108", "values at byte %g of %d; %d or later wanted", offset, len(data), least)
+		return none, fault.New(fault.BadFile, "byte 108", "values at byte %g of %d; %d or later wanted", offset,
+			len(data), least)
 	}
 	start, n := int(offset), elements(shape)*layout.Size
 	if n > len(data)-start {
@@ -218,7 +226,8 @@ func (f niftiFile) affine(shape []int) (acquisition.Array, string, error) {
 	unit := f.head[niftiXyztUnits] & 7
 	mm, known := niftiMM[unit]
 	if !known {
-		return acquisition.Array{}, "", fault.New(fault.BadFile, "byte 123", "unit of space %d; 1 (m), 2 (mm) or 3 (µm) wanted", unit)
+		return acquisition.Array{}, "", fault.New(fault.BadFile, "byte 123",
+			"unit of space %d; 1 (m), 2 (mm) or 3 (µm) wanted", unit)
 	}
 	if unit == 0 {
 		source += "; unit not stated, mm taken"
@@ -227,7 +236,8 @@ func (f niftiFile) affine(shape []int) (acquisition.Array, string, error) {
 	for _, row := range rows {
 		for _, v := range row {
 			if v-v != 0 {
-				return acquisition.Array{}, "", fault.New(fault.BadFile, "header", "the place of the voxels is not finite (%s)", source)
+				return acquisition.Array{}, "", fault.New(fault.BadFile, "header",
+					"the place of the voxels is not finite (%s)", source)
 			}
 			values = append(values, v*mm)
 		}

@@ -57,7 +57,8 @@ func salvageText(arrays []acquisition.Array) string {
 		if a.Truncated.Stated > 0 {
 			stated = fmt.Sprintf(" of %d", a.Truncated.Stated)
 		}
-		cut += fmt.Sprintf("; of %q %d%s entries along axis %d", a.Name, a.Shape[a.Truncated.Axis], stated, a.Truncated.Axis+1)
+		cut += fmt.Sprintf("; of %q %d%s entries along axis %d", a.Name, a.Shape[a.Truncated.Axis], stated,
+			a.Truncated.Axis+1)
 	}
 	return fmt.Sprintf("the file was cut short; complete are %d arrays%s; what stood behind is lost", whole, cut)
 }
@@ -104,7 +105,8 @@ func salvageNPZ(_ string, data []byte, limits Limits) ([]acquisition.Array, erro
 		left -= int64(len(body))
 		name := strings.TrimSuffix(h.name, ".npy")
 		if whole && h.flags&zipSizesBehind == 0 && crc32.ChecksumIEEE(body) != h.crc {
-			return nil, fault.New(fault.BadFile, name, "has another checksum than stated; the file is damaged, not only cut")
+			return nil, fault.New(fault.BadFile, name,
+				"has another checksum than stated; the file is damaged, not only cut")
 		}
 		if strings.HasSuffix(h.name, ".npy") {
 			array, err := cutNPY(body, limits)

@@ -151,8 +151,10 @@ func join(group []fileArrays) (fileArrays, error) {
 	for i, a := range first.arrays {
 		same := make([]acquisition.Array, len(group))
 		for k, f := range group {
-			if len(f.arrays) != len(first.arrays) || f.arrays[i].AfterFile != a.AfterFile || !a.AfterFile && f.arrays[i].Name != a.Name {
-				return out, fault.New(fault.BadFile, f.name, "holds %s, %s holds %s; the files of a series hold the same arrays",
+			if len(f.arrays) != len(first.arrays) || f.arrays[i].AfterFile != a.AfterFile || !a.AfterFile &&
+				f.arrays[i].Name != a.Name {
+				return out, fault.New(fault.BadFile, f.name,
+					"holds %s, %s holds %s; the files of a series hold the same arrays",
 					namesOf(f.arrays), first.name, namesOf(first.arrays))
 			}
 			same[k] = f.arrays[i]
@@ -169,7 +171,8 @@ func join(group []fileArrays) (fileArrays, error) {
 		array.AfterFile = a.AfterFile
 		out.arrays = append(out.arrays, array)
 	}
-	out.note = fmt.Sprintf("%d files, %s to %s, were put together in the order of their numbers, as %s", len(group), first.name, last.name, acquisition.ShapeText(leading))
+	out.note = fmt.Sprintf("%d files, %s to %s, were put together in the order of their numbers, as %s", len(group),
+		first.name, last.name, acquisition.ShapeText(leading))
 	return out, nil
 }
 

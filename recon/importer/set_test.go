@@ -21,9 +21,11 @@ func byNames(arrays []acquisition.Array) map[string]acquisition.Array {
 
 // series is one table for every shot, and a table of gradients.
 func series(shots int) []File {
-	files := []File{{"scan/gradients.csv", []byte("gx,gy\n" + strings.Repeat("1,2\n", shots))}, {"scan/.hidden", nil}, {"scan/read me.txt", []byte("words only")}}
+	files := []File{{"scan/gradients.csv", []byte("gx,gy\n" + strings.Repeat("1,2\n", shots))}, {"scan/.hidden", nil},
+		{"scan/read me.txt", []byte("words only")}}
 	for s := shots; s >= 1; s-- {
-		files = append(files, File{fmt.Sprintf("scan/shot_%d.csv", s), fmt.Appendf(nil, "t,re,im\n0,%d,0\n1,%d,5\n", s, 10*s)})
+		files = append(files, File{fmt.Sprintf("scan/shot_%d.csv", s), fmt.Appendf(nil, "t,re,im\n0,%d,0\n1,%d,5\n", s,
+			10*s)})
 	}
 	return files
 }
@@ -39,7 +41,8 @@ func TestOneFilePerShotInTheOrderOfNumbers(t *testing.T) {
 	if err != nil || re[2*9] != 10 || re[2*1] != 2 || len(got) != 5 || got["re"].Shape[0] != 12 || got["gx"].Len() != 12 {
 		t.Errorf("%v, %v, %v", got, re, err)
 	}
-	if len(tree.Notes) != 2 || !strings.Contains(tree.Notes[0], "read me.txt") || !strings.Contains(tree.Notes[1], "12 files, scan/shot_1.csv to scan/shot_12.csv") {
+	if len(tree.Notes) != 2 || !strings.Contains(tree.Notes[0], "read me.txt") ||
+		!strings.Contains(tree.Notes[1], "12 files, scan/shot_1.csv to scan/shot_12.csv") {
 		t.Errorf("%q", tree.Notes)
 	}
 }
@@ -75,7 +78,8 @@ func TestAShotOfAnotherLengthIsAFaultWithBothShapes(t *testing.T) {
 	files[4].Data = []byte("t,re,im\n0,1,2\n")
 	_, err := ReadSet(files)
 	f := wantFault(t, err, fault.BadFile)
-	if !strings.Contains(f.Error(), "shot_2.csv") || !strings.Contains(f.Error(), "[1]") || !strings.Contains(f.Error(), "[2]") {
+	if !strings.Contains(f.Error(), "shot_2.csv") || !strings.Contains(f.Error(), "[1]") ||
+		!strings.Contains(f.Error(), "[2]") {
 		t.Error(f)
 	}
 	files[4].Data = []byte("t,re\n0,1\n1,2\n")
@@ -85,7 +89,8 @@ func TestAShotOfAnotherLengthIsAFaultWithBothShapes(t *testing.T) {
 
 func TestTracesInOneFileAndGradientsInAnother(t *testing.T) {
 	signal := npyOf("<c8", "(2, 3, 4)", make([]byte, 8*24))
-	tree, err := ReadSet([]File{{"signal.npy", signal}, {"gradient_mT_per_m.csv", []byte("1 0 0\n0 1 0\n0 0 2\n")}, {"x/n.csv", []byte("v\n1\n")}, {"y/n.csv", []byte("v\n2\n")}})
+	tree, err := ReadSet([]File{{"signal.npy", signal}, {"gradient_mT_per_m.csv", []byte("1 0 0\n0 1 0\n0 0 2\n")},
+		{"x/n.csv", []byte("v\n1\n")}, {"y/n.csv", []byte("v\n2\n")}})
 	if err != nil {
 		t.Fatal(err)
 	}
