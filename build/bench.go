@@ -106,6 +106,8 @@ type bench struct {
 	outside    struct{ FitPerVoxel, Iradon float64 }
 	iradonWasm float64
 	memory     map[string]int64
+
+	checkSeconds float64
 }
 
 func (b *bench) prepare() error {
@@ -156,6 +158,9 @@ func (b *bench) run(c benchCase) error {
 		if err := b.runMethod(c, method, a, facts, raw, repeats); err != nil {
 			return err
 		}
+	}
+	if c.name == smallBench.name {
+		b.runCheck(a, repeats)
 	}
 	return nil
 }
@@ -369,6 +374,7 @@ func (b *bench) table() string {
 		fmt.Fprintf(&t, "| %s | %s | %.2f s | %.2f s | %s | %.2f s | %.2f s | %.2f | %.2f | %.2f | %s |\n", r.job, r.size, s["wasm"], s["wasm 2"], orDash(s["first"]), s["native"], s["C"],
 			s["wasm"]/s["C"], s["wasm"]/s["native"], s["wasm"]/s["wasm 2"], r.target)
 	}
+	t.WriteString(b.checkLine())
 	inside := 0.0
 	for _, r := range b.rows {
 		if r.job == "rate fit" && r.size == smallBench.name {

@@ -27,6 +27,7 @@ var lines = map[string]int{
 	"recon/importer":     3,
 	"recon/condition":    3,
 	"recon/quality":      5, // judges what conditioning measures, shares of directions and rates; proposes settings
+	"recon/forward":      2,
 	"recon/sampling":     3,
 	"recon/backproject":  4,
 	"recon/gridding":     4,

@@ -41,6 +41,13 @@ export interface DeriveRequest {
   recipe: Recipe;
 }
 
+export interface Directions {
+  dim: number;
+}
+
+export interface DirectionsRequest {
+}
+
 export interface ExamineRequest {
   recipe: Recipe;
   rates: Summary | null;
@@ -144,6 +151,14 @@ export interface MeasureRequest {
 export interface Measured {
   constants: string;
   warnings: string[];
+}
+
+export interface Neighbour {
+  shot: number;
+  angleDeg: number;
+  opposite: boolean;
+  real: number[];
+  projection: number[];
 }
 
 export interface Numbers {
@@ -343,6 +358,25 @@ export interface Settings {
   excludeDelays?: number[];
 }
 
+export interface ShotRequest {
+  recipe: Recipe;
+  shot: number;
+}
+
+export interface ShotView {
+  shot: number;
+  delay: number;
+  timeNS: number[];
+  real: number[];
+  imag: number[];
+  positionMM: number[];
+  projection: number[];
+  neighbours: Neighbour[];
+  fromImage: number[];
+  offNeighbours: number;
+  offImage: number;
+}
+
 export interface SinglePoint {
   axis: string;
   firstUS: number;
@@ -395,5 +429,7 @@ export interface Requests {
   fit: { body: FitRequest; reply: Fitted };
   derive: { body: DeriveRequest; reply: Numbers };
   examine: { body: ExamineRequest; reply: Report };
+  directions: { body: DirectionsRequest; reply: Directions };
+  shot: { body: ShotRequest; reply: ShotView };
   export: { body: ExportRequest; reply: Exported };
 }

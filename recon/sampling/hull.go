@@ -93,7 +93,7 @@ func farthest(p [][3]float64, measure func([3]float64) float64) int {
 
 // addPoint returns the hull with point i added: the triangles that i sees are replaced by a fan from i to their rim.
 func addPoint(hull []face, p [][3]float64, i int) []face {
-	kept := hull[:0:len(hull)]
+	kept := hull[:0]
 	var rim [][2]int
 	for _, f := range hull {
 		if dot(f.normal, p[i]) <= f.offset {

@@ -60,6 +60,8 @@ var handlers = map[string]handler{
 	"fit":         handleFit,
 	"derive":      handleDerive,
 	"examine":     handleExamine,
+	"directions":  handleDirections,
+	"shot":        handleShot,
 	"export":      handleExport,
 }
 
@@ -264,6 +266,35 @@ func handleExamine(e *Engine, body []byte, _ [][]byte, _ func(Progress)) (any, [
 		return nil, nil, err
 	}
 	return *session.Examine(e.open.a, q.Recipe, q.Rates), nil, nil
+}
+
+func handleDirections(e *Engine, _ []byte, _ [][]byte, _ func(Progress)) (any, [][]byte, error) {
+	a := e.open.a
+	gradient, role := make([]float32, 0, 3*a.Shots), make([]byte, 0, a.Shots)
+	for s, g := range a.GradientMTPerM {
+		gradient = append(gradient, float32(g[0]), float32(g[1]), float32(g[2]))
+		role = append(role, byte(a.ShotRole[s]))
+	}
+	return Directions{Dim: a.Dim}, [][]byte{bytesOf(gradient), role}, nil
+}
+
+func handleShot(e *Engine, body []byte, buffers [][]byte, _ func(Progress)) (any, [][]byte, error) {
+	q, err := decode[ShotRequest](body)
+	if err != nil {
+		return nil, nil, err
+	}
+	if len(buffers) > 1 {
+		return nil, nil, fault.New(fault.Bug, "shot", "%d buffers; one image at most", len(buffers))
+	}
+	var image []float32
+	if len(buffers) == 1 {
+		image = floatsOf(buffers[0])
+	}
+	v, err := session.LookAt(e.open.a, q.Recipe, q.Shot, image)
+	if err != nil {
+		return nil, nil, err
+	}
+	return *v, nil, nil
 }
 
 func handleExport(e *Engine, body []byte, buffers [][]byte, _ func(Progress)) (any, [][]byte, error) {

@@ -152,6 +152,28 @@ func TestDemoIsMarkedAsMadeUp(t *testing.T) {
 	}
 }
 
+// Directions come as numbers of four bytes, and a shot with what the image would have given.
+func TestAShotIsShownBesideItsNeighboursAndTheImage(t *testing.T) {
+	e := NewEngine("test")
+	opened, _ := ask[Opened](t, e, "open", OpenRequest{Names: []string{"disc.npz"}}, disc(t))
+	directions, out := ask[Directions](t, e, "directions", DirectionsRequest{})
+	if directions.Dim != 2 || len(out[0]) != 12*opened.Shots || len(out[1]) != opened.Shots {
+		t.Fatalf("%dD, %d bytes of gradients and %d roles for %d shots", directions.Dim, len(out[0]), len(out[1]), opened.Shots)
+	}
+	if g := floatsOf(out[0])[3*7]; g != float32(e.open.a.GradientMTPerM[7][0]) {
+		t.Errorf("gradient of shot 7 along x is %g, sent as %g", e.open.a.GradientMTPerM[7][0], g)
+	}
+	n := opened.Recipe.Reconstruction.Matrix
+	shot, _ := ask[Shot](t, e, "shot", ShotRequest{Recipe: opened.Recipe, Shot: 7}, make([]byte, 4*n*n))
+	if len(shot.Neighbours) != 2 || len(shot.FromImage) != len(shot.PositionMM) || shot.OffImage != 1 { // from an empty image by itself
+		t.Errorf("%d neighbours, %d values of the image at %d positions, off by %g", len(shot.Neighbours), len(shot.FromImage), len(shot.PositionMM), shot.OffImage)
+	}
+	without, _ := ask[Shot](t, e, "shot", ShotRequest{Recipe: opened.Recipe, Shot: 7})
+	if len(without.FromImage) != 0 || without.OffNeighbours != shot.OffNeighbours {
+		t.Errorf("without an image: %d values", len(without.FromImage))
+	}
+}
+
 func TestProgressRisesToOne(t *testing.T) {
 	e := NewEngine("test")
 	ask[Opened](t, e, "demo", DemoRequest{Noise: false})

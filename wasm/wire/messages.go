@@ -178,6 +178,25 @@ type ExamineRequest struct {
 // Examined answers ExamineRequest: findings, proposed conditioning, and numbers per shot.
 type Examined = quality.Report
 
+// DirectionsRequest asks for the gradients of all shots. The reply has the buffers gradient (float32 [shot][3], mT/m) and role
+// (uint8 [shot], 0 image, 1 zero gradient, 2 off resonance).
+type DirectionsRequest struct{}
+
+// Directions answers DirectionsRequest.
+type Directions struct {
+	Dim int `json:"dim"`
+}
+
+// ShotRequest asks for one shot at the reference delay beside its neighbours in direction and what an image would have
+// given. The buffer, which may be missing, is that image (float32, of the reference frame).
+type ShotRequest struct {
+	Recipe recipe.Recipe `json:"recipe"`
+	Shot   int           `json:"shot"`
+}
+
+// Shot answers ShotRequest.
+type Shot = session.ShotView
+
 // ExportRequest asks for one map as a file. The buffer holds its values; the reply has one buffer, the file's bytes.
 type ExportRequest struct {
 	Recipe   recipe.Recipe `json:"recipe"`

@@ -24,6 +24,8 @@ var Exchanges = []Exchange{
 	{"fit", FitRequest{}, Fitted{}},
 	{"derive", DeriveRequest{}, Derived{}},
 	{"examine", ExamineRequest{}, Examined{}},
+	{"directions", DirectionsRequest{}, Directions{}},
+	{"shot", ShotRequest{}, Shot{}},
 	{"export", ExportRequest{}, Exported{}},
 }
 
