@@ -22,9 +22,10 @@ type fineness struct {
 	between     int // table entries per transformed sample, linearly interpolated; a voxel takes the nearest entry
 }
 
-// fine is what images are made with. The damping of straight lines and of nearest entries is compensated, see
+// fine is what images are made with. Eight samples keep the compensation below 1.5 % at the cutoff: on the gradient centre
+// every spoke is read at a sample, where nothing was damped. The damping of straight lines and of nearest entries is compensated, see
 // compensated; what is left differs from spoke to spoke and averages to 1e-3 of an image from some hundred spokes.
-var fine = fineness{transformed: 4, between: 8}
+var fine = fineness{transformed: 8, between: 4}
 
 // chunk is how many spokes are filtered, smeared back and reported together: enough to keep the passes over the image
 // cheap, few enough for progress at the pace of a screen. A multiple of four.
