@@ -94,7 +94,6 @@ type timing struct {
 	job, size string
 	seconds   map[string]float64 // by way: "wasm", "wasm 2 workers", "first", "native", "C"
 	target    string
-	note      string
 }
 
 type bench struct {

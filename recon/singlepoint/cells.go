@@ -171,9 +171,9 @@ func (f *search) index(b [3]int) int { return (b[2]*(2*f.n+1)+b[1])*(2*f.n+1) + 
 // nearest returns the place nearest to x, -1 if there is none at all. Since x lies within half an edge of the middle of
 // its box, the boxes up to ring away hold all places within ring edges.
 func (f *search) nearest(x [3]float64) int {
-	best, distance := -1, math.Inf(1)
-	at := f.box(x)
+	best, at := -1, f.box(x)
 	for ring := 1; ring <= 2*f.n; ring++ {
+		var distance float64
 		best, distance = f.nearestWithin(x, at, ring)
 		if distance <= float64(ring)*f.edge {
 			break
