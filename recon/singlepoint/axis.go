@@ -112,13 +112,14 @@ func weigh(out, src []float64, stride int, weights []float64) {
 	for ; m+4 <= len(weights); m += 4 {
 		a, b := src[m*stride:m*stride+n], src[(m+1)*stride:(m+1)*stride+n]
 		c, d := src[(m+2)*stride:(m+2)*stride+n], src[(m+3)*stride:(m+3)*stride+n]
+		a, b, c, d = a[:len(out)], b[:len(out)], c[:len(out)], d[:len(out)]
 		wa, wb, wc, wd := weights[m], weights[m+1], weights[m+2], weights[m+3]
 		for i := range out {
 			out[i] += wa*a[i] + wb*b[i] + wc*c[i] + wd*d[i]
 		}
 	}
 	for ; m < len(weights); m++ {
-		a, w := src[m*stride:m*stride+n], weights[m]
+		a, w := src[m*stride : m*stride+n][:len(out)], weights[m]
 		for i := range out {
 			out[i] += w * a[i]
 		}
