@@ -20,6 +20,8 @@ export interface Options {
   onProgress?: (progress: Progress) => void;
   /** Index of the one worker that may do this. */
   worker?: number;
+  /** Gives up this one request when it aborts, and leaves all others alone. */
+  signal?: AbortSignal;
 }
 
 export interface Result<K extends keyof Requests> {
@@ -33,6 +35,9 @@ const mostWorkers = 4;
 const memoryLimitBytes = 2 ** 30;
 // A worker that fails to start this often in a row is left alone.
 const mostFailures = 3;
+
+// What takes a moment goes before what takes long, so that a change of one variant is answered while others are made.
+const momentary = new Set<string>(["plan", "measure", "traces", "derive", "export"]);
 
 interface Job {
   kind: string;
@@ -92,8 +97,9 @@ export class Engine {
   }
 
   /**
-   * Asks the engine for one thing. Jobs run on free workers in the order in which they came. An open or demo request
-   * first cancels all else, then one worker answers it, and the others follow on their own.
+   * Asks the engine for one thing. Jobs run on free workers in the order in which they came, those of a moment before
+   * long ones. An open or demo request first cancels all else, then one worker answers it, and the others follow on
+   * their own.
    * Rejects with EngineFault or Cancelled.
    */
   async request<K extends keyof Requests>(
@@ -108,6 +114,8 @@ export class Engine {
     const answer = await new Promise<Answer>((resolve, reject) => {
       const transfer = options.transfer && !opens;
       const job: Job = { kind, body: JSON.stringify(body), inputs, options: { ...options, transfer }, resolve, reject };
+      if (options.signal?.aborted) return reject(new Cancelled());
+      options.signal?.addEventListener("abort", () => this.giveUp(job), { once: true });
       if (opens) this.opening = job;
       else this.queue.push(job);
       this.schedule();
@@ -127,6 +135,13 @@ export class Engine {
       this.renew(slot);
     }
     for (const job of given) job.reject(new Cancelled());
+  }
+
+  /** Gives up one job, whether it waits or runs. One that has ended stays as it is. */
+  private giveUp(job: Job): void {
+    job.reject(new Cancelled());
+    this.queue = this.queue.filter((waiting) => waiting !== job);
+    for (const slot of this.slots) if (slot.job === job) this.renew(slot);
   }
 
   private newSlot(index: number): Slot {
@@ -217,8 +232,10 @@ export class Engine {
 
   private nextJob(slot: Slot): Job | undefined {
     if (this.opening) return this.slots.some((s) => s.job === this.opening) ? undefined : this.opening;
-    const at = this.queue.findIndex(({ options }) => this.mayRun(slot, options.worker));
-    return at < 0 ? undefined : this.queue.splice(at, 1)[0];
+    const mine = this.queue.filter(({ options }) => this.mayRun(slot, options.worker));
+    const next = mine.find(({ kind }) => momentary.has(kind)) ?? mine[0];
+    this.queue = this.queue.filter((job) => job !== next);
+    return next;
   }
 
   private mayRun(slot: Slot, wanted: number | undefined): boolean {
