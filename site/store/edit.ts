@@ -2,7 +2,7 @@
 
 import type { Calibration, Recipe } from "../wire.gen";
 import { acquisition } from "./acquisition";
-import { valueAt, withValue, textOf } from "./recipe";
+import { sameValue, textOf, valueAt, withValue } from "./recipe";
 import { rerun } from "./run";
 import { stageNames, type StageName, type Strand } from "./strand";
 
@@ -17,7 +17,7 @@ const due = new Map<Strand, Due>();
 
 /** Changes one leaf of the recipe; stage is the first that the catalogue says is redone. */
 export function setValue(strand: Strand, path: string, value: unknown, stage: StageName): void {
-  if (valueAt(strand.recipe.value, path) === value) return;
+  if (sameValue(valueAt(strand.recipe.value, path), value)) return;
   change(strand, path, withValue(strand.recipe.value, path, value), stage);
 }
 

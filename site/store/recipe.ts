@@ -9,6 +9,11 @@ export function valueAt(recipe: Recipe, path: string): unknown {
   return path.split(".").reduce<unknown>((tree, key) => (tree as Tree | null | undefined)?.[key], recipe);
 }
 
+/** Tells whether two values of a setting are the same; lists are by what they hold. */
+export function sameValue(a: unknown, b: unknown): boolean {
+  return a === b || JSON.stringify(a) === JSON.stringify(b);
+}
+
 /** Returns a copy of the recipe with one leaf changed. */
 export function withValue(recipe: Recipe, path: string, value: unknown): Recipe {
   return changed(recipe as unknown as Tree, path.split("."), value) as unknown as Recipe;

@@ -3,9 +3,11 @@
 import { useEffect, useState } from "preact/hooks";
 import { unitText } from "../../draw/number";
 import { setValue } from "../../store/edit";
-import { valueAt } from "../../store/recipe";
+import { listOf, textOfList } from "../../store/list";
+import { sameValue, valueAt } from "../../store/recipe";
 import type { StageName, Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
+import { mayBeEmpty } from "./groups";
 
 interface Props {
   setting: Setting;
@@ -13,26 +15,32 @@ interface Props {
   explain: (help: string) => void;
 }
 
+// A longer label takes a line of its own.
+const shortLabel = 22;
+
 export function Field({ setting, strand, explain }: Props) {
-  const { path, label, unit } = setting;
+  const { path, label, unit, kind } = setting;
   const id = `setting-${strand.id}-${path.replaceAll(".", "-")}`;
-  const [unreadable, setUnreadable] = useState(false);
-  const fault = unreadable ? "enter a number" : faultAt(strand, path);
+  const [unread, setUnread] = useState("");
+  const fault = unread || faultAt(strand, path);
   const help = explanationOf(setting);
-  const input = {
-    id,
-    "data-setting": path,
-    "aria-describedby": `${id}-help`,
-    "aria-invalid": fault ? true : undefined,
-  };
+  const Input = kind === "choice" ? ChoiceInput : kind === "list" ? ListInput : NumberInput;
   return (
-    <div class="field" onPointerEnter={() => explain(help)} onFocusIn={() => explain(help)}>
+    <div
+      class={label.length > shortLabel ? "field long" : "field"}
+      onPointerEnter={() => explain(help)}
+      onFocusIn={() => explain(help)}
+    >
       <label for={id}>{label}</label>
-      {setting.kind === "choice" ? (
-        <ChoiceInput {...input} setting={setting} strand={strand} />
-      ) : (
-        <NumberInput {...input} setting={setting} strand={strand} tellUnreadable={setUnreadable} />
-      )}
+      <Input
+        id={id}
+        data-setting={path}
+        aria-describedby={`${id}-help`}
+        aria-invalid={fault ? true : undefined}
+        setting={setting}
+        strand={strand}
+        tellUnread={setUnread}
+      />
       <span class="unit">{unitText(unit)}</span>
       <span class="unseen" id={`${id}-help`}>
         {fault ? `${fault}. ${help}` : help}
@@ -46,11 +54,18 @@ export function Field({ setting, strand, explain }: Props) {
   );
 }
 
-type InputProps = { setting: Setting; strand: Strand; id: string };
+interface InputProps {
+  setting: Setting;
+  strand: Strand;
+  id: string;
+  "data-setting": string;
+  "aria-describedby": string;
+  "aria-invalid": true | undefined;
+  /** Says why what was typed cannot be read, or "". */
+  tellUnread: (why: string) => void;
+}
 
-type NumberInputProps = InputProps & { tellUnreadable: (unreadable: boolean) => void };
-
-function ChoiceInput({ setting, strand, ...input }: InputProps) {
+function ChoiceInput({ setting, strand, tellUnread, ...input }: InputProps) {
   const { path, choices, stage } = setting;
   const value = String(valueAt(strand.recipe.value, path) ?? "");
   const pick = (picked: string) => setValue(strand, path, picked, stage as StageName);
@@ -65,38 +80,65 @@ function ChoiceInput({ setting, strand, ...input }: InputProps) {
   );
 }
 
+interface Reading {
+  /** What the text says, or undefined when it cannot be read. */
+  read: (text: string) => unknown;
+  show: (value: unknown) => string;
+  unreadable: string;
+}
+
 interface Draft {
   text: string;
   value: unknown;
 }
 
-/** Shows what is being typed as it is typed; a value that comes from elsewhere, as by undo, takes its place. */
-function NumberInput({ setting, strand, tellUnreadable, ...input }: NumberInputProps) {
-  const { path, min, max, step, stage } = setting;
+/** Keeps what is being typed as it is typed; a value that comes from elsewhere, as by undo, takes its place. */
+function useDraft({ setting, strand, tellUnread }: InputProps, { read, show, unreadable }: Reading) {
+  const { path, stage } = setting;
   const [draft, setDraft] = useState<Draft | null>(null);
   const value = valueAt(strand.recipe.value, path);
-  const standing = draft !== null && draft.value === value;
+  const standing = draft !== null && sameValue(draft.value, value);
   useEffect(() => {
-    if (!standing) tellUnreadable(false);
+    if (!standing) tellUnread("");
   }, [standing]);
-  const read = (text: string) => {
-    const entered = Number(text);
-    const readable = text.trim() !== "" && Number.isFinite(entered);
-    tellUnreadable(!readable);
-    setDraft({ text, value: readable ? entered : value });
-    if (readable) setValue(strand, path, entered, stage as StageName);
+  const onInput = (event: { currentTarget: HTMLInputElement }) => {
+    const text = event.currentTarget.value;
+    const entered = event.currentTarget.validity.badInput ? undefined : read(text);
+    tellUnread(entered === undefined ? unreadable : "");
+    setDraft({ text, value: entered ?? value });
+    if (entered !== undefined) setValue(strand, path, entered, stage as StageName);
   };
+  return { value: standing ? draft.text : show(value), onInput };
+}
+
+function NumberInput(props: InputProps) {
+  const { setting, strand, tellUnread, ...input } = props;
+  const { path, min, max, step } = setting;
+  const optional = mayBeEmpty(path);
+  const typed = useDraft(props, {
+    read: (text) => readNumber(text, optional),
+    show: (value) => String(value ?? (optional ? "" : 0)),
+    unreadable: "enter a number",
+  });
   const limits = min < max ? { min, max } : {};
-  return (
-    <input
-      {...input}
-      {...limits}
-      type="number"
-      value={standing ? draft.text : String(value ?? 0)}
-      step={step || "any"}
-      onInput={(event) => read(event.currentTarget.value)}
-    />
-  );
+  const placeholder = optional ? "0" : undefined;
+  return <input {...input} {...limits} {...typed} type="number" placeholder={placeholder} step={step || "any"} />;
+}
+
+function readNumber(text: string, optional: boolean): number | undefined {
+  if (text.trim() === "") return optional ? 0 : undefined;
+  const entered = Number(text);
+  return Number.isFinite(entered) ? entered : undefined;
+}
+
+function ListInput(props: InputProps) {
+  const { setting, strand, tellUnread, ...input } = props;
+  const typed = useDraft(props, {
+    read: (text) => listOf(text) ?? undefined,
+    show: (value) => textOfList((value ?? []) as number[]),
+    unreadable: "enter whole numbers and ranges, as in 3, 17, 40-44",
+  });
+  return <input {...input} {...typed} type="text" placeholder="none" spellcheck={false} autocomplete="off" />;
 }
 
 /** Returns what the engine said against the setting at a path, or "". */
@@ -107,6 +149,6 @@ export function faultAt(strand: Strand, path: string): string {
 
 /** Returns what a setting does, with its unit and its limits. */
 function explanationOf({ help, unit, min, max, kind }: Setting): string {
-  const limits = kind === "choice" || min === max ? "" : ` From ${min} to ${max}${unit && ` ${unitText(unit)}`}.`;
+  const limits = kind === "choice" || kind === "list" || min === max ? "" : ` From ${min} to ${max}${unit && ` ${unitText(unit)}`}.`;
   return help + limits;
 }

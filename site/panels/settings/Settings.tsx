@@ -1,7 +1,9 @@
-// The form of a recipe, drawn from the engine's catalogue. A faulty entry shows the engine's words at its field; the
-// last good result stays on the screen.
+// The form of a recipe, drawn from the engine's catalogue: the settings that the chosen method uses, in groups that
+// fold. A faulty entry shows the engine's words at its field; the last good result stays on the screen.
 
+import type { ComponentChildren } from "preact";
 import { useState } from "preact/hooks";
+import { changedSettings, wordsFor } from "../../store/difference";
 import { redo, resetToDefaults, setCalibrated, undo } from "../../store/edit";
 import { hello } from "../../store/engine";
 import { wordsOf } from "../../store/fault";
@@ -9,18 +11,18 @@ import { textOf } from "../../store/recipe";
 import type { Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
 import { Field, faultAt } from "./Field";
-
-const calibrationBranch = "calibration.";
+import { groupsOf, isAside, isForMethod, openGroups, type SettingGroup } from "./groups";
 
 export function Settings({ strand }: { strand: Strand }) {
   const [help, setHelp] = useState("");
-  const catalogue = hello.value?.catalogue ?? [];
+  const { method } = strand.recipe.value.reconstruction;
+  const catalogue = (hello.value?.catalogue ?? []).filter((setting) => isForMethod(setting, method));
   return (
     <form class="settings" onSubmit={(event) => event.preventDefault()}>
       <Steps strand={strand} />
       <StrayFault strand={strand} catalogue={catalogue} />
-      {groupsOf(catalogue).map(({ name, settings }) => (
-        <Group key={name} name={name} settings={settings} strand={strand} explain={setHelp} />
+      {groupsOf(catalogue).map((group) => (
+        <Group key={group.name} group={group} strand={strand} explain={setHelp} />
       ))}
       <p class="help" aria-hidden="true">
         {help || "Point at a setting, or move to it, to read what it does."}
@@ -59,22 +61,70 @@ function StrayFault({ strand, catalogue }: { strand: Strand; catalogue: Setting[
 }
 
 interface GroupProps {
-  name: string;
-  settings: Setting[];
+  group: SettingGroup;
   strand: Strand;
   explain: (help: string) => void;
 }
 
-function Group({ name, settings, strand, explain }: GroupProps) {
-  const optional = settings.every(({ path }) => path.startsWith(calibrationBranch));
+function Group({ group, strand, explain }: GroupProps) {
+  const { name, settings, isCalibration } = group;
   const calibrated = strand.recipe.value.calibration !== undefined;
+  const shown = isCalibration && !calibrated ? [] : settings;
+  const rows = (some: Setting[]) =>
+    some.map((setting) => <Field key={setting.path} setting={setting} strand={strand} explain={explain} />);
+  const aside = shown.filter(({ path }) => isAside(path));
   return (
-    <fieldset class="group">
-      <legend>{name}</legend>
-      {optional && <CalibrationSwitch strand={strand} on={calibrated} />}
-      {(calibrated || !optional) &&
-        settings.map((setting) => <Field key={setting.path} setting={setting} strand={strand} explain={explain} />)}
-    </fieldset>
+    <Fold name={name} settings={shown} strand={strand} starts={openGroups.includes(name)}>
+      {isCalibration && <CalibrationSwitch strand={strand} on={calibrated} />}
+      {rows(shown.filter(({ path }) => !isAside(path)))}
+      {aside.length > 0 && (
+        <Fold name="Errors and corrections" settings={aside} strand={strand} starts={false}>
+          {rows(aside)}
+        </Fold>
+      )}
+    </Fold>
+  );
+}
+
+interface FoldProps {
+  name: string;
+  settings: Setting[];
+  strand: Strand;
+  starts: boolean;
+  children: ComponentChildren;
+}
+
+/** A part of the form that folds to one line. It unfolds by itself when something in it is faulty. */
+function Fold({ name, settings, strand, starts, children }: FoldProps) {
+  const [open, setOpen] = useState(starts);
+  const faulty = settings.some(({ path }) => faultAt(strand, path) !== "");
+  const isOpen = open || faulty;
+  return (
+    <details
+      class="group"
+      data-group={name}
+      open={isOpen}
+      onToggle={(event) => event.currentTarget.open !== isOpen && setOpen(event.currentTarget.open)}
+    >
+      <summary>
+        <b>{name}</b> {!isOpen && <Departure settings={settings} strand={strand} />}
+      </summary>
+      <div role="group" aria-label={name}>
+        {children}
+      </div>
+    </details>
+  );
+}
+
+/** Says in one line what departs from the defaults. */
+function Departure({ settings, strand }: Pick<FoldProps, "settings" | "strand">) {
+  const recipe = strand.recipe.value;
+  const phrases = changedSettings(settings, recipe, strand.defaults).map((setting) => wordsFor(setting, recipe));
+  const words = phrases.join(", ") || "as default";
+  return (
+    <span class={phrases.length > 0 ? "departure" : "departure none"} title={words}>
+      {words}
+    </span>
   );
 }
 
@@ -90,14 +140,4 @@ function CalibrationSwitch({ strand, on }: { strand: Strand; on: boolean }) {
       convert to pO₂
     </label>
   );
-}
-
-function groupsOf(catalogue: Setting[]): { name: string; settings: Setting[] }[] {
-  const groups: { name: string; settings: Setting[] }[] = [];
-  for (const setting of catalogue) {
-    const known = groups.find(({ name }) => name === setting.group);
-    if (known) known.settings.push(setting);
-    else groups.push({ name: setting.group, settings: [setting] });
-  }
-  return groups;
 }
