@@ -14,6 +14,7 @@ import { startFault } from "./store/engine";
 import { faultOf, wordsOf } from "./store/fault";
 import { openFault } from "./store/opening";
 import { strands } from "./store/strand";
+import { touched } from "./store/variants";
 
 export function Page() {
   const dropping = useDrop();
@@ -85,8 +86,8 @@ async function openDropped(transfer: DataTransfer): Promise<void> {
 function useUndoKeys(): void {
   useEffect(() => {
     const keydown = (event: KeyboardEvent) => {
-      const strand = strands.value[0];
-      if (!strand || !(event.ctrlKey || event.metaKey) || event.altKey) return;
+      const strand = touched.value;
+      if (!strand || isText(event.target) || !(event.ctrlKey || event.metaKey) || event.altKey) return;
       const key = event.key.toLowerCase();
       if (key !== "z" && key !== "y") return;
       event.preventDefault();
@@ -94,6 +95,11 @@ function useUndoKeys(): void {
     };
     return listening({ keydown });
   }, []);
+}
+
+/** Tells whether a place has an undo of its own that a person would miss. */
+function isText(target: EventTarget | null): boolean {
+  return target instanceof HTMLInputElement && target.matches("[data-name]");
 }
 
 type Listeners = { [Name in keyof WindowEventMap]?: (event: WindowEventMap[Name]) => void };

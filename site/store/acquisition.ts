@@ -8,8 +8,10 @@ import type { Opened } from "../wire.gen";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
 import { duringOpening, openFault, openingSettled } from "./opening";
-import { forgetResults, rerun } from "./run";
-import { makeStrand, strands } from "./strand";
+import { forgetResults } from "./results";
+import { endRun, rerun } from "./run";
+import { strands } from "./strand";
+import { firstStrand } from "./variants";
 import { showFromTheStart } from "./view";
 
 export const acquisition = signal<Opened | null>(null);
@@ -42,14 +44,14 @@ async function open<Kind extends "open" | "demo">(
 }
 
 function adopt(opened: Opened): void {
+  for (const old of strands.value) endRun(old);
   forgetResults();
-  for (const old of strands.value) old.run++;
-  const strand = makeStrand(0, opened.recipe);
+  const strand = firstStrand(opened.recipe);
   batch(() => {
     openFault.value = null;
     acquisition.value = opened;
     strands.value = [strand];
-    showFromTheStart(opened.delayUS[opened.referenceDelay]);
+    showFromTheStart();
   });
   rerun(strand, "measure");
 }

@@ -1,34 +1,17 @@
-// The flow through one strand: plan, measure, reconstruct, fit, derive. A stage whose key did not change is taken from
-// the cache. A change of a setting overtakes the older run; what that run is computing is given up when the change
-// reaches it, and joined when it does not.
+// The flow through one strand: plan, measure, reconstruct, fit, derive. A result whose key did not change is not made
+// again. A change of a setting overtakes the older run; what that run is computing is given up when the change reaches
+// it, and joined when it does not.
 
 import { Cancelled } from "../engine/fault";
 import type { Measured, Plan, Recipe } from "../wire.gen";
-import { Cache } from "./cache";
-import { engine } from "./engine";
+import { coarseOf, isWorthwhile, noteSeconds } from "./coarse";
 import { faultOf } from "./fault";
 import { openingSettled } from "./opening";
-import { askPlan, derive, fit, measure, reconstruct, type Tell } from "./stages";
 import { textOf } from "./recipe";
-import { stageNames, type Images, type Oxygen, type Rates, type StageName, type Strand } from "./strand";
-
-const mebi = 2 ** 20;
-
-const caches = {
-  measure: new Cache<Measured>(mebi),
-  reconstruct: new Cache<Images>(512 * mebi),
-  fit: new Cache<Rates>(256 * mebi),
-  derive: new Cache<Oxygen>(256 * mebi),
-};
-
-interface UnderWay {
-  strand: Strand;
-  stage: StageName;
-  result: Promise<unknown>;
-}
-
-/** Stages being computed now, by key, so that a newer run can wait for one instead of starting it again. */
-const underWay = new Map<string, UnderWay>();
+import { isUnderWay, keptResult, sharedResult, turnAway, type LaterStage, type Make, type ResultOf } from "./results";
+import { askPlan, derive, fit, measure, reconstruct } from "./stages";
+import { stageNames, strands, type Made, type StageName, type Strand } from "./strand";
+import { frameUS } from "./view";
 
 /** Stages long enough that giving one up is worth new workers. */
 const longStages: StageName[] = ["reconstruct", "fit"];
@@ -38,55 +21,96 @@ class Overtaken extends Error {}
 
 /** Runs a strand with its recipe as it stands. The change reached no stage before changedStage. */
 export function rerun(strand: Strand, changedStage: StageName): void {
+  if (!strands.peek().includes(strand)) return;
   const run = ++strand.run;
-  const reached = longStages.filter((stage) => stageNames.indexOf(stage) >= stageNames.indexOf(changedStage));
-  if ([...underWay.values()].some((one) => one.strand === strand && reached.includes(one.stage))) engine().cancel();
+  turnAway(
+    strand,
+    longStages.filter((stage) => stageNames.indexOf(stage) >= stageNames.indexOf(changedStage)),
+  );
   void follow(strand, run);
 }
 
-/** Forgets all results, because another acquisition is open. */
-export function forgetResults(): void {
-  for (const cache of Object.values(caches)) cache.clear();
-  underWay.clear();
+/** Ends the run of a strand that is no longer there. */
+export function endRun(strand: Strand): void {
+  strand.run++;
+  turnAway(strand, stageNames);
 }
 
 async function follow(strand: Strand, run: number): Promise<void> {
   try {
-    await chain(strand, run);
+    await chain({ strand, run });
   } catch (error) {
     if (!(error instanceof Overtaken)) throw error;
   }
 }
 
-async function chain(strand: Strand, run: number): Promise<void> {
-  const plan = await planned(strand, run);
+/** One run of a strand. */
+interface At {
+  strand: Strand;
+  run: number;
+}
+
+async function chain(at: At): Promise<void> {
+  const { strand } = at;
+  const plan = await planned(at);
   if (!plan) return;
-  const at = { strand, run };
-  const measured = await stage(
-    at,
-    "measure",
-    plan,
-    (tell) => measure(plan, tell),
-    () => 1,
-  );
+  const measured = await stage(at, "measure", plan, (watch) => measure(plan, watch));
   if (!measured) return;
-  const images = await stage(at, "reconstruct", plan, (t) => reconstruct(plan, measured.constants, t), imageBytes);
+  await showCoarse(at, plan);
+  const images = await stage(at, "reconstruct", plan, timed(plan, measured));
   if (!images) return;
   strand.images.value = images;
-  const rates = await stage(at, "fit", plan, (tell) => fit(plan, images, tell), rateBytes);
+  const rates = await stage(at, "fit", plan, (watch) => fit(plan, images, watch));
   if (!rates) return;
   strand.rates.value = rates;
-  const oxygen = await stage(at, "derive", plan, (tell) => derive(plan, images, rates, tell), oxygenBytes);
+  const oxygen = await stage(at, "derive", plan, (watch) => derive(plan, images, rates, watch));
   if (!oxygen) return;
   strand.oxygen.value = oxygen;
   strand.warnings.value = [...plan.warnings, ...measured.warnings, ...oxygen.derived.warnings];
 }
 
+/** Shows a coarse result of every stage, if the full one will be long in coming. Its faults are left to the full run. */
+async function showCoarse(at: At, full: Plan): Promise<void> {
+  if (keptResult(full, "reconstruct") || isUnderWay(full, "reconstruct") || !isWorthwhile(full)) return;
+  at.strand.stages.reconstruct.value = { state: "working", fraction: 0, coarse: true };
+  try {
+    await coarseChain(at, full);
+  } catch (error) {
+    if (error instanceof Overtaken) throw error;
+  }
+}
+
+async function coarseChain(at: At, full: Plan): Promise<void> {
+  const { strand } = at;
+  const plan = await patiently(at, () => askPlan(textOf(coarseOf(full.recipe))));
+  const measured = await result(at, "measure", plan, (watch) => measure(plan, watch));
+  const images = await result(at, "reconstruct", plan, timed(plan, measured));
+  strand.images.value = inPlaceOf(full.keys.reconstruct, images);
+  const rates = await result(at, "fit", plan, (watch) => fit(plan, images, watch));
+  strand.rates.value = inPlaceOf(full.keys.fit, rates);
+  const oxygen = await result(at, "derive", plan, (watch) => derive(plan, images, rates, watch));
+  strand.oxygen.value = inPlaceOf(full.keys.derive, oxygen);
+}
+
+function inPlaceOf<Result extends Made>(standsFor: string, result: Result): Result {
+  return { ...result, standsFor };
+}
+
+/** Returns the making of images, which notes how long it took. */
+function timed(plan: Plan, { constants }: Measured): Make<"reconstruct"> {
+  return async (watch) => {
+    const began = performance.now();
+    const images = await reconstruct(plan, constants, watch);
+    noteSeconds(plan, since(began));
+    return images;
+  };
+}
+
 /** Checks the recipe. On a fault the stages keep what they show. */
-async function planned(strand: Strand, run: number): Promise<Plan | null> {
+async function planned(at: At): Promise<Plan | null> {
+  const { strand } = at;
   const recipe = strand.recipe.value;
   const began = performance.now();
-  const at = { strand, run };
   try {
     const plan = await patiently(at, () => askPlan(textOf(recipe)));
     accept(strand, plan, recipe);
@@ -101,6 +125,7 @@ async function planned(strand: Strand, run: number): Promise<Plan | null> {
 
 function accept(strand: Strand, plan: Plan, recipe: Recipe): void {
   const before = strand.plan.value?.keys;
+  if (!before) frameUS.value = plan.frames.timeUS[plan.frames.reference];
   strand.plan.value = plan;
   strand.planned.value = recipe;
   settle(strand, (name) => before?.[name] !== plan.keys[name]);
@@ -113,40 +138,20 @@ function settle(strand: Strand, matches: (name: LaterStage) => boolean): void {
   }
 }
 
-interface At {
-  strand: Strand;
-  run: number;
-}
-
-type LaterStage = Exclude<StageName, "plan">;
-type Kept = typeof caches;
-type Of<Name extends keyof Kept> = Kept[Name] extends Cache<infer Value> ? Value : never;
-
-/** Returns the result of one stage: kept, under way, or made now. Returns null when the stage failed. */
-async function stage<Name extends keyof Kept>(
+/** Returns the result of one stage and shows how it comes about. Returns null when the stage failed. */
+async function stage<Name extends LaterStage>(
   at: At,
   name: Name,
   plan: Plan,
-  make: (tell: Tell) => Promise<Of<Name>>,
-  bytesOf: (value: Of<Name>) => number,
-): Promise<Of<Name> | null> {
-  const key = plan.keys[name];
-  const cache = caches[name] as unknown as Cache<Of<Name>>;
-  const kept = cache.get(key);
-  if (kept) {
-    at.strand.stages[name].value = { state: "done", seconds: 0, reused: true };
-    return kept;
-  }
+  make: Make<Name>,
+): Promise<ResultOf<Name> | null> {
+  const shown = at.strand.stages[name];
+  const reused = keptResult(plan, name) !== undefined;
   const began = performance.now();
-  at.strand.stages[name].value = { state: "working", fraction: 0 };
-  const makeAndKeep = async () => {
-    const value = await make(teller(at.strand, name, key));
-    cache.put(key, value, bytesOf(value));
-    return value;
-  };
+  if (!reused) shown.value = { state: "working", fraction: 0 };
   try {
-    const value = await patiently(at, () => joined(at.strand, name, key, makeAndKeep));
-    at.strand.stages[name].value = { state: "done", seconds: since(began), reused: false };
+    const value = await result(at, name, plan, make);
+    shown.value = { state: "done", seconds: reused ? 0 : since(began), reused };
     return value;
   } catch (error) {
     fail(at, name, error);
@@ -154,14 +159,15 @@ async function stage<Name extends keyof Kept>(
   }
 }
 
-function joined<Value>(strand: Strand, stage: StageName, key: string, make: () => Promise<Value>): Promise<Value> {
-  const known = underWay.get(key);
-  if (known) return known.result as Promise<Value>;
-  const result = make().finally(() => {
-    if (underWay.get(key)?.result === result) underWay.delete(key);
-  });
-  underWay.set(key, { strand, stage, result });
-  return result;
+/** Returns the result of one stage: kept, under way, or made now. */
+async function result<Name extends LaterStage>(
+  at: At,
+  name: Name,
+  plan: Plan,
+  make: Make<Name>,
+): Promise<ResultOf<Name>> {
+  const tell = teller(at.strand, name, plan.keys[name]);
+  return keptResult(plan, name) ?? patiently(at, () => sharedResult(at.strand, plan, name, make, tell));
 }
 
 /** Awaits work, and starts it again when it was cancelled on behalf of somebody else. Throws Overtaken. */
@@ -180,7 +186,8 @@ async function patiently<Value>(at: At, work: () => Promise<Value>): Promise<Val
   }
 }
 
-function teller(strand: Strand, name: LaterStage, key: string): Tell {
+/** Returns what shows the fraction of a stage, as long as the strand still waits for just that result. */
+function teller(strand: Strand, name: LaterStage, key: string): (fraction: number) => void {
   return (fraction) => {
     const shown = strand.stages[name];
     const wanted = strand.plan.value?.keys[name] === key;
@@ -195,16 +202,4 @@ function fail({ strand, run }: At, name: StageName, error: unknown): void {
 
 function since(began: number): number {
   return (performance.now() - began) / 1000;
-}
-
-function imageBytes({ frames }: Images): number {
-  return frames.reduce((sum, image) => sum + image.byteLength, 0);
-}
-
-function rateBytes({ rate }: Rates): number {
-  return rate.byteLength * 4 + rate.length;
-}
-
-function oxygenBytes({ fate, pO2 }: Oxygen): number {
-  return fate.byteLength + (pO2 ? 2 * pO2.byteLength : 0);
 }

@@ -8,7 +8,7 @@ import { setRecipe } from "./edit";
 import { engine } from "./engine";
 import { faultOf } from "./fault";
 import { textOf } from "./recipe";
-import { isOlder, type Oxygen, type Rates, type Strand } from "./strand";
+import { isCoarse, isOlder, type Oxygen, type Rates, strands, type Strand } from "./strand";
 import { frameShown } from "./view";
 
 export type MapName = "pO2" | "rate" | "amplitude" | "mask";
@@ -25,11 +25,11 @@ const stageOf: Record<MapName, "reconstruct" | "derive"> = {
   mask: "derive",
 };
 
-/** Tells whether a strand has the map, and has it with the settings that stand now. */
+/** Tells whether a strand has the map, and has it in full and with the settings that stand now. */
 export function canSave(strand: Strand, map: MapName): boolean {
   const { oxygen, images } = strand;
   const shown = { pO2: oxygen.value?.pO2, rate: oxygen.value, amplitude: images.value, mask: oxygen.value }[map];
-  return Boolean(shown) && !isOlder(strand, stageOf[map]);
+  return Boolean(shown) && !isOlder(strand, stageOf[map]) && !isCoarse(strand, stageOf[map]);
 }
 
 export async function saveMap(strand: Strand, map: MapName): Promise<void> {
@@ -39,7 +39,7 @@ export async function saveMap(strand: Strand, map: MapName): Promise<void> {
   await noted(async () => {
     const request = { recipe: plan.recipe, quantity: map, rateName: plan.frames.rateName };
     const { body, buffers } = await engine().request("export", request, [values]);
-    download(body.name, new Blob([buffers[0]], { type: body.type }));
+    download(named(strand, body.name), new Blob([buffers[0]], { type: body.type }));
   });
 }
 
@@ -52,7 +52,7 @@ export function saveRecipe(strand: Strand): void {
   const recipe = strand.plan.value?.recipe ?? strand.recipe.value;
   const text = textOf(recipe, 2) + "\n";
   const stem = acquisition.value?.name ?? "acquisition";
-  download(`${stem}-recipe.json`, new Blob([text], { type: "application/json" }));
+  download(named(strand, `${stem}-recipe.json`), new Blob([text], { type: "application/json" }));
 }
 
 /** Takes a recipe in. It is checked by the engine first; a faulty one changes nothing. */
@@ -85,6 +85,12 @@ function valuesOf(strand: Strand, map: MapName): Float32Array<ArrayBuffer> | Uin
 function inMap(oxygen: Oxygen | null, rates: Rates | null): Float32Array<ArrayBuffer> | null {
   if (!oxygen || !rates || oxygen.fate.length !== rates.rate.length) return null;
   return rates.rate.map((rate, i) => (hasValue(oxygen.fate[i]) ? rate : NaN));
+}
+
+/** Puts the name of a strand before that of a file, where there is more than one strand. */
+function named(strand: Strand, file: string): string {
+  if (strands.value.length < 2) return file;
+  return `${strand.name.value.replace(/[^\p{L}\p{N}]+/gu, "-").toLowerCase()}-${file}`;
 }
 
 function download(name: string, blob: Blob): void {

@@ -59,11 +59,10 @@ function amplitudeWindow(images: Images | null): Window {
   return rounded(low, high);
 }
 
-/** Puts everything shared back for a newly opened acquisition. */
-export function showFromTheStart(referenceUS: number): void {
+/** Puts everything shared back for a newly opened acquisition; the frame follows from its first plan. */
+export function showFromTheStart(): void {
   plane.value = "xy";
   cursorMM.value = [0, 0, 0];
-  frameUS.value = referenceUS;
   shot.value = 0;
   for (const window of Object.values(setWindows)) window.value = null;
 }

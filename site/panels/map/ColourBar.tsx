@@ -2,7 +2,7 @@
 
 import { useEffect, useRef, useState } from "preact/hooks";
 import { tableFor, tableSize, type Quantity } from "../../draw/colour";
-import { percent, plain, unitText } from "../../draw/number";
+import { percent, plain as plainly, unitText } from "../../draw/number";
 import type { Painted } from "../../draw/slice";
 import { ticksOf, type Window } from "../../draw/window";
 import { strands } from "../../store/strand";
@@ -15,20 +15,22 @@ interface Props {
   quantity: Quantity;
   title: string;
   tally: Painted | null;
+  /** Leaves the inputs away. */
+  plain: boolean;
 }
 
-export function ColourBar({ id, quantity, title, tally }: Props) {
+export function ColourBar({ id, quantity, title, tally, plain }: Props) {
   const window = windowOf(quantity);
   return (
     <div class="bar">
       <Colours quantity={quantity} />
       <Ticks window={window} />
       <p class="bar-title">{barTitle(quantity, title)}</p>
-      <WindowInputs id={id} quantity={quantity} title={title} window={window} />
+      {!plain && <WindowInputs id={id} quantity={quantity} title={title} window={window} />}
       <p class="clipped" data-clipped={quantity}>
         {tally ? clippedWords(tally) : ""}
       </p>
-      {quantity === "amplitude" && <FrameSwitch id={id} />}
+      {!plain && quantity === "amplitude" && <FrameSwitch id={id} />}
     </div>
   );
 }
@@ -37,7 +39,7 @@ export function ColourBar({ id, quantity, title, tally }: Props) {
 function barTitle(quantity: Quantity, title: string): string {
   if (quantity !== "amplitude") return `${title} in ${quantity === "rate" ? unitText("1/us") : "torr"}`;
   const timeUS = strands.value[0]?.plan.value?.frames.timeUS ?? [];
-  const us = plain(timeUS[frameIndex(timeUS)] ?? 0, 4);
+  const us = plainly(timeUS[frameIndex(timeUS)] ?? 0, 4);
   return `${title} at ${us} µs in signal ${amplitudeUnit()}`;
 }
 
@@ -57,7 +59,7 @@ function Ticks({ window }: { window: Window }) {
     <div class="ticks" aria-hidden="true">
       {ticksOf(window, 5).map((value) => (
         <span key={value} style={{ left: `${place(value)}%` }}>
-          {plain(value, 4)}
+          {plainly(value, 4)}
         </span>
       ))}
     </div>

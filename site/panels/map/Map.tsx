@@ -6,7 +6,7 @@ import { axesOf, sameGrid, voxelAt, type Grid } from "../../draw/grid";
 import { drawScene, voxelUnder, type Scene } from "../../draw/scene";
 import type { Painted } from "../../draw/slice";
 import { tones } from "../../store/appearance";
-import { isOlder, type Strand } from "../../store/strand";
+import { isCoarse, isOlder, stageNames, strands, type Strand } from "../../store/strand";
 import { cursorMM, frameShown, plane, pointAt, windowOf } from "../../store/view";
 import { useWidth } from "../chart/Chart";
 import { valueAt } from "../view/readout";
@@ -17,24 +17,38 @@ interface Props {
   strand: Strand;
   quantity: Quantity;
   title: string;
+  /** Leaves away what all strands share and another one shows: the inputs of the window. */
+  plain: boolean;
 }
 
 const stageOf = { amplitude: "reconstruct", rate: "fit", pO2: "derive" } as const;
 
-export function Map({ strand, quantity, title }: Props) {
+export function Map({ strand, quantity, title, plain }: Props) {
   const [tally, setTally] = useState<Painted | null>(null);
   const scene = sceneOf(strand, quantity);
   const older = isOlder(strand, stageOf[quantity]);
+  const coarse = isCoarse(strand, stageOf[quantity]);
   return (
-    <figure class="map" data-map={quantity} data-older={older || undefined}>
-      {older && <p class="older">older than the settings</p>}
-      <Canvas scene={scene} hint={`map-keys-${strand.id}`} label={`${title} map`} tell={setTally} />
+    <figure class="map" data-map={quantity} data-older={older || undefined} data-coarse={coarse || undefined}>
+      {(older || coarse) && <p class="older">{older ? "older than the settings" : coarseWords(strand)}</p>}
+      <Canvas scene={scene} hint={`map-keys-${strands.value[0].id}`} label={`${title} map`} tell={setTally} />
       <p class="at-cursor">
         at the cursor <b data-value={quantity}>{valueAt(strand, quantity)}</b>
       </p>
-      <ColourBar id={`${strand.id}-${quantity}`} quantity={quantity} title={title} tally={scene ? tally : null} />
+      <ColourBar
+        id={`${strand.id}-${quantity}`}
+        quantity={quantity}
+        title={title}
+        tally={scene ? tally : null}
+        plain={plain}
+      />
     </figure>
   );
+}
+
+function coarseWords({ stages }: Strand): string {
+  const failed = stageNames.some((name) => stages[name].value.state === "failed");
+  return failed ? "coarse" : "coarse, full image is being made";
 }
 
 /** Returns what is to be drawn, or null while there is nothing. */

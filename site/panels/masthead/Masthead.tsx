@@ -5,13 +5,14 @@ import { acquisition, openDemo, openFiles } from "../../store/acquisition";
 import { theme, type Theme } from "../../store/appearance";
 import { canSave, loadRecipe, mapNames, saveMap, saveMaps, saveRecipe, type MapName } from "../../store/save";
 import { strands } from "../../store/strand";
+import { touch, touched } from "../../store/variants";
 
 export function Masthead() {
   return (
     <header class="masthead">
       <div class="name">
         <h1>Torrloom</h1>
-        <p>pO₂ maps from the raw data of a pulse EPR oxygen imager</p>
+        <p>pO₂ maps from the raw data of a pulse EPR imager</p>
         {acquisition.value?.madeUp && (
           <strong class="tag" data-made-up>
             Made-up data
@@ -24,15 +25,16 @@ export function Masthead() {
 }
 
 function Actions() {
-  const strand = strands.value[0];
+  const strand = touched.value;
   return (
     <div class="actions" role="group" aria-label="Files and settings of the page">
       <FileButton id="open-files" label="Open files" multiple take={openFiles} />
       <button id="use-demo" onClick={() => void openDemo()}>
         Use demo
       </button>
+      <VariantPicker />
       <SaveMaps />
-      <button id="save-recipe" disabled={!strand} onClick={() => saveRecipe(strand)}>
+      <button id="save-recipe" disabled={!strand} onClick={() => saveRecipe(strand!)}>
         Save recipe
       </button>
       <FileButton
@@ -40,7 +42,7 @@ function Actions() {
         label="Load recipe"
         accept=".json,application/json"
         disabled={!strand}
-        take={([file]) => void loadRecipe(strand, file)}
+        take={([file]) => void loadRecipe(strand!, file)}
       />
       <label class="theme">
         <span class="unseen">Theme</span>
@@ -51,6 +53,24 @@ function Actions() {
         </select>
       </label>
     </div>
+  );
+}
+
+/** Chooses among several variants the one that is saved, loaded into and undone; it follows the one touched last. */
+function VariantPicker() {
+  if (strands.value.length < 2) return null;
+  const pick = (id: number) => touch(strands.value.find((strand) => strand.id === id)!);
+  return (
+    <label class="variant-picker">
+      <span class="unseen">Variant to save or to load into</span>
+      <select id="variant" value={touched.value!.id} onChange={(event) => pick(Number(event.currentTarget.value))}>
+        {strands.value.map((strand) => (
+          <option key={strand.id} value={strand.id}>
+            {strand.name.value}
+          </option>
+        ))}
+      </select>
+    </label>
   );
 }
 
@@ -83,13 +103,13 @@ function FileButton({ id, label, take, disabled, ...input }: FileButtonProps) {
 const wordsFor: Record<MapName, string> = {
   pO2: "pO₂ map",
   rate: "rate map",
-  amplitude: "amplitude image at the shown delay",
+  amplitude: "amplitude image that is shown",
   mask: "mask",
 };
 
 function SaveMaps() {
   const menu = useRef<HTMLDetailsElement>(null);
-  const strand = strands.value[0];
+  const strand = touched.value;
   useClosing(menu);
   return (
     <details class="menu" ref={menu}>
@@ -101,12 +121,12 @@ function SaveMaps() {
             id={`save-${map}`}
             key={map}
             disabled={!strand || !canSave(strand, map)}
-            onClick={() => void saveMap(strand, map)}
+            onClick={() => void saveMap(strand!, map)}
           >
             {wordsFor[map]}
           </button>
         ))}
-        <button id="save-all" disabled={!strand} onClick={() => void saveMaps(strand)}>
+        <button id="save-all" disabled={!strand} onClick={() => void saveMaps(strand!)}>
           all of them
         </button>
       </div>

@@ -4,6 +4,7 @@ import { acquisition } from "../../store/acquisition";
 import { wordsOf } from "../../store/fault";
 import { opening, openFault } from "../../store/opening";
 import { saveFault } from "../../store/save";
+import { bringBack, removed } from "../../store/variants";
 
 export function Notices() {
   return (
@@ -11,6 +12,15 @@ export function Notices() {
       {opening.value && (
         <p class="notice" data-opening>
           Opening {opening.value} …
+        </p>
+      )}
+      {removed.value && (
+        <p class="notice" data-removed>
+          {removed.value.strand.name.value} was removed.
+          <button id="bring-back" onClick={bringBack}>
+            Bring it back
+          </button>
+          <button onClick={() => (removed.value = null)}>Dismiss</button>
         </p>
       )}
       {openFault.value && (

@@ -9,7 +9,13 @@ import { windowOf } from "../../store/view";
 import type { Summary } from "../../wire.gen";
 import { Chart, type Table } from "../chart/Chart";
 
-export function Numbers({ strand }: { strand: Strand }) {
+interface Props {
+  strand: Strand;
+  /** Leaves away what is not needed to tell one strand from another. */
+  brief: boolean;
+}
+
+export function Numbers({ strand, brief }: Props) {
   const derived = strand.oxygen.value?.derived;
   if (!derived) return <p class="words">nothing yet</p>;
   const quantity = derived.pO2 ? "pO2" : "rate";
@@ -19,16 +25,18 @@ export function Numbers({ strand }: { strand: Strand }) {
     <div class="numbers">
       {summary.count > 0 && <Histogram summary={summary} quantity={quantity} name={name} />}
       <dl class="figures">
-        {figuresOf(summary, derived).map(({ key, label, text }) => (
+        {figuresOf(summary, derived, brief).map(({ key, label, text }) => (
           <div key={key}>
             <dt>{label}</dt>
             <dd data-number={key}>{text}</dd>
           </div>
         ))}
-        <div>
-          <dt>time of the last run</dt>
-          <dd data-number="seconds">{seconds(secondsOf(strand))}</dd>
-        </div>
+        {!brief && (
+          <div>
+            <dt>time of the last run</dt>
+            <dd data-number="seconds">{seconds(secondsOf(strand))}</dd>
+          </div>
+        )}
       </dl>
     </div>
   );
@@ -69,13 +77,13 @@ interface Figure {
 }
 
 /** Returns the numbers in reading order. Their digits follow the median standard error of a voxel. */
-function figuresOf(s: Summary, derived: Derived): Figure[] {
+function figuresOf(s: Summary, derived: Derived, brief: boolean): Figure[] {
   if (s.count === 0) return [{ key: "voxels", label: "voxels", text: "0: no voxel has an answer" }];
   const unit = unitText(s.unit);
   const decimals = decimalsFor(s.medianSE);
   const say = (value: number) => fixed(value, decimals);
   const [lower, upper] = s.quartiles;
-  return [
+  const all = [
     { key: "median", label: "median", text: `${say(s.median)} ${unit}` },
     { key: "quartiles", label: "quartiles", text: `${say(lower)} to ${say(upper)} ${unit}` },
     { key: "mean", label: "mean ± SD", text: `${say(s.mean)} ± ${say(s.sd)} ${unit}` },
@@ -85,6 +93,8 @@ function figuresOf(s: Summary, derived: Derived): Figure[] {
     { key: "beyond", label: "left, right of the bars", text: `${count(s.below)}, ${count(s.above)}` },
     ...(derived.pO2 ? [{ key: "negative", label: "below zero", text: count(derived.negative) }] : []),
   ];
+  const dispensable = ["mean", "beyond", ...(derived.negative === 0 ? ["negative"] : [])];
+  return brief ? all.filter(({ key }) => !dispensable.includes(key)) : all;
 }
 
 function fractionsOf({ fractions, unit }: Summary): Figure[] {

@@ -65,6 +65,7 @@ function Failure({ strand, stage, fault }: { strand: Strand; stage: StageName; f
 }
 
 function wordsFor(name: StageName, state: StageState): string {
+  if (state.state === "working" && state.coarse) return "making a coarse map first";
   if (state.state === "working") return `${working[name]}, ${Math.round(100 * state.fraction)} %`;
   if (state.state !== "done") return "waiting";
   if (name === "plan") return done.plan;
