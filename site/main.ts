@@ -1,9 +1,13 @@
 // Entry of the page. For tests, and for whoever looks at it with the browser's tools, it keeps these marks:
 //
 //   body[data-state]                          starting, ready (an acquisition is open) or failed (no engine)
+//   [data-strand="0"]                         a variant, the first being the reference; data-touched: undo acts on it;
+//                                             data-folded: its settings are hidden
+//   [data-name], [data-difference]            its name, and what sets it apart from the reference
 //   [data-strand="0"] [data-stage][data-state] stages plan, measure, reconstruct, fit, derive of a variant, each
 //                                             waiting, working, done or failed
 //   [data-strand="0"] [data-map]              figures amplitude, rate, pO2; data-older when older than the settings;
+//                                             data-coarse while the full image is being made;
 //                                             canvas[data-drawn] once there is something to see
 //   [data-value], [data-clipped]              value of a map at the cursor, share of its slice beyond the window
 //   [data-number]                             median, quartiles, mean, medianSE, fraction-2.5, ..., voxels, negative,
@@ -11,7 +15,10 @@
 //   [data-fate]                               legend entry of one fate, by its value
 //   [data-fact]                               name, sequence, delays, shots, ... of the acquisition
 //   [data-setting]                            input of a setting by its path; "calibration" is the switch
-//   [data-action]                             buttons undo, redo, reset of a variant; retry at a failed stage
+//   [data-group]                              a part of the form that folds
+//   [data-action]                             buttons undo, redo, reset, add, remove, fold of a variant; retry at a
+//                                             failed stage
+//   [data-removed], #bring-back, #variant     the variant removed last; the one that saving and loading act on
 //   [data-fault]                              text of a fault: open, save, start, recipe, or the path of a setting
 //   [data-made-up], [data-no-calibration], [data-opening], [data-warnings], [data-build]
 //   #open-files-input, #load-recipe-input     file inputs; #use-demo, #save-recipe, #save-maps, #save-pO2, #save-rate,

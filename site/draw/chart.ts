@@ -10,8 +10,8 @@ export type ChartElement = SVGSVGElement | HTMLElement;
 
 const height = 116;
 const margins = { marginTop: 14, marginRight: 8, marginBottom: 28, marginLeft: 42 };
-const frame = { height, ...margins, style: { fontSize: "10.5px", background: "none", overflow: "visible" } };
-const axis = {
+export const frame = { height, ...margins, style: { fontSize: "10.5px", background: "none", overflow: "visible" } };
+export const axis = {
   tickSize: 3,
   tickPadding: 2,
   labelArrow: "none" as const,

@@ -99,3 +99,50 @@ func TestAMissingCalibrationIsSaidInTheRecipeText(t *testing.T) {
 		return JSON.parse(textOf({ recipe: 1 } as any))`),
 		`{"recipe":1,"calibration":null}`)
 }
+
+func TestListsAreReadAsTheyAreWritten(t *testing.T) {
+	demand(t, evaluate(t, `import { listOf, textOfList } from "./list"`, `
+		return ["3, 17, 40-44", "44 - 42;3 ", "5 4,4 3 9", "", "40 – 42"].map((text) => {
+			const list = listOf(text);
+			return list && textOfList(list) }).concat(["3.5", "-3", "a", "1-", "0-999999999", "1e3"].map(listOf) as any)`),
+		`["3, 17, 40-44",null,"3-5, 9","","40-42",null,null,null,null,null,null]`)
+}
+
+// differing is a catalogue of each kind of setting with two recipes that differ in all of them.
+const differing = `
+	const row = (path, label, rest) => ({ path, label, unit: "", methods: [], choices: [], kind: "number", ...rest });
+	const choices = [{ value: "a", label: "plain sum" }, { value: "b", label: "weighted sum" }];
+	const settings = [
+		row("reconstruction.method", "Method", { kind: "choice", choices }),
+		row("reconstruction.cutoff", "Cutoff", { unit: "of k_max" }),
+		row("reconstruction.fieldOfViewMM", "Field of view", { unit: "mm" }),
+		row("reconstruction.tolerance", "Kernel tolerance", { methods: ["b"] }),
+		row("conditioning.excludeShots", "Leave out shots", { kind: "list" }),
+		row("calibration.zeroPerUS", "Rate at zero oxygen", { unit: "1/us" }),
+	] as any;
+	const first = { reconstruction: { method: "a", cutoff: 1, fieldOfViewMM: 30, tolerance: 0.1 }, conditioning: {} };
+	const second = { reconstruction: { method: "b", cutoff: 0.8, fieldOfViewMM: 28, tolerance: 0.2 },
+		conditioning: { excludeShots: [3, 7, 8, 9] }, calibration: { zeroPerUS: 0.1 } };`
+
+func TestWhatSetsVariantsApartIsSaidInWords(t *testing.T) {
+	demand(t, evaluate(t, `import { differences } from "./difference"`, differing+`
+		return [differences(settings, second as any, first as any), differences(settings, first as any, second as any),
+			differences(settings, first as any, { ...first, conditioning: { excludeShots: [] } } as any)]`),
+		`[["converted to pO₂","method weighted sum instead of plain sum","cutoff 0.8 instead of 1",`+
+			`"field of view 28 instead of 30 mm","kernel tolerance 0.2","leave out shots 3, 7-9 instead of none"],`+
+			`["not converted to pO₂","method plain sum instead of weighted sum","cutoff 1 instead of 0.8",`+
+			`"field of view 30 instead of 28 mm","leave out shots none instead of 3, 7-9"],[]]`)
+}
+
+// fakePlan gives the two functions of coarse.ts what they look at.
+const fakePlan = `const plan = (matrix, method = "back-projection") =>
+	({ recipe: { reconstruction: { method, matrix } }, frames: { timeUS: [1, 2] } }) as any;`
+
+func TestACoarseImageIsMadeOnlyWhereItIsWorthItsTime(t *testing.T) {
+	demand(t, evaluate(t, `import { coarseOf, isWorthwhile, noteSeconds } from "./coarse"`, fakePlan+`
+		const unknown = [isWorthwhile(plan(64)), isWorthwhile(plan(16))];
+		noteSeconds(plan(64), 0.29); noteSeconds(plan(96), 4); noteSeconds(plan(48, "gridding"), 0.9);
+		noteSeconds(plan(32), 4); noteSeconds(plan(16, "gridding"), 1.1);
+		return [unknown, [64, 96, 32].map((n) => isWorthwhile(plan(n))), coarseOf(plan(33, "single-point").recipe)]`),
+		`[[true,false],[false,true,false],{"reconstruction":{"method":"single-point","matrix":17}}]`)
+}

@@ -8,6 +8,7 @@ import { traces, tracesFault } from "../../store/traces";
 import { frameIndex, shot } from "../../store/view";
 import type { Input, Opened, Traces } from "../../wire.gen";
 import { Chart, type Table } from "../chart/Chart";
+import { CoverageChart } from "./Coverage";
 import { factsOf, sizeOf } from "./facts";
 
 export function Acquisition() {
@@ -80,7 +81,7 @@ function Curves({ opened }: { opened: Opened }) {
     <div class="curves">
       <ShotPicker shots={opened.shots} gradient={curves?.gradientMTPerM} />
       {tracesFault.value && <p class="fault">{wordsOf(tracesFault.value)}</p>}
-      {curves && <Charts curves={curves} />}
+      {curves && <Charts opened={opened} curves={curves} />}
     </div>
   );
 }
@@ -113,8 +114,9 @@ function Gradient({ of }: { of: number[] }) {
   return <span>; gradient ({of.map((g) => significant(g, 3)).join(", ")}) mT/m</span>;
 }
 
-function Charts({ curves }: { curves: Traces }) {
-  const { timeNS, projection, delayUS } = curves;
+/** Single-point data have no projections and no echo; what they have instead is a coverage. */
+function Charts({ opened, curves }: { opened: Opened; curves: Traces }) {
+  const { timeNS, projection, delayUS, echoHeight } = curves;
   return (
     <div class="charts">
       {timeNS.length > 0 && (
@@ -125,18 +127,23 @@ function Charts({ curves }: { curves: Traces }) {
           table={() => traceTable(curves)}
         />
       )}
-      <Chart
-        title="projection"
-        draw={(width) => projectionChart(curves, width)}
-        summary={`projection of shot ${shot.value} over ${projection.length} positions`}
-        table={() => projectionTable(curves)}
-      />
-      <Chart
-        title="whole signal over the delays"
-        draw={(width) => delayChart(curves, frameIndex(delayUS), width)}
-        summary={`mean echo height at ${delayUS.length} delays`}
-        table={() => delayTable(curves)}
-      />
+      {opened.coverage && <CoverageChart opened={opened} coverage={opened.coverage} />}
+      {projection.length > 0 && (
+        <Chart
+          title="projection"
+          draw={(width) => projectionChart(curves, width)}
+          summary={`projection of shot ${shot.value} over ${projection.length} positions`}
+          table={() => projectionTable(curves)}
+        />
+      )}
+      {echoHeight.length > 0 && (
+        <Chart
+          title="whole signal over the delays"
+          draw={(width) => delayChart(curves, frameIndex(delayUS), width)}
+          summary={`mean echo height at ${delayUS.length} delays`}
+          table={() => delayTable(curves)}
+        />
+      )}
     </div>
   );
 }

@@ -1,7 +1,7 @@
 // The facts of an acquisition in words.
 
 import { bytes, count, plain, significant } from "../../draw/number";
-import type { Opened } from "../../wire.gen";
+import type { Coverage, Opened, SampleTime } from "../../wire.gen";
 
 export interface Fact {
   key: string;
@@ -38,12 +38,38 @@ function measuredFacts(o: Opened): Fact[] {
 
 function limitFacts(o: Opened): Fact[] {
   return [
-    { key: "kMax", label: "k max", text: `${significant(o.kMaxPerMM)} /mm` },
-    { key: "resolution", label: "resolution 1/(2 k max)", text: `${significant(o.resolutionMM)} mm` },
-    { key: "aliasFree", label: "alias-free field of view", text: `${significant(o.aliasFreeMM)} mm` },
+    ...(o.coverage ? coverageFacts(o.coverage, o.extentMM) : spokeFacts(o)),
     { key: "extent", label: "measured extent", text: `${significant(o.extentMM)} mm across` },
     { key: "signalToNoise", label: "signal to noise", text: significant(o.signalToNoise, 2) },
   ];
+}
+
+function spokeFacts(o: Opened): Fact[] {
+  return [
+    { key: "kMax", label: "k max", text: `${significant(o.kMaxPerMM)} /mm` },
+    { key: "resolution", label: "resolution 1/(2 k max)", text: `${significant(o.resolutionMM)} mm` },
+    { key: "aliasFree", label: "alias-free field of view", text: `${significant(o.aliasFreeMM)} mm` },
+  ];
+}
+
+/** Field of view and resolution of single-point data fall with the sample time: what the first and the last one give. */
+function coverageFacts({ cartesian, values, times }: Coverage, extentMM: number): Fact[] {
+  const usable = times.filter((time) => time.usable);
+  const ends = [usable[0], usable[usable.length - 1]].filter((time) => time !== undefined);
+  const fromTo = (of: (time: SampleTime) => number) => ends.map((time) => significant(of(time))).join(" to ");
+  const grid = cartesian ? values.filter((n) => n > 0).join(" × ") : "no regular grid";
+  return [
+    { key: "gradients", label: "gradients", text: grid },
+    { key: "fieldOfView", label: "field of view over time", text: `${fromTo((t) => t.fieldOfViewMM)} mm` },
+    { key: "resolution", label: "resolution over time", text: `${fromTo((t) => t.resolutionMM)} mm` },
+    { key: "covering", label: "hold the object", text: coveringOf(usable, extentMM) },
+  ];
+}
+
+/** Returns how many sample times have a field of view that holds the object. */
+export function coveringOf(times: SampleTime[], extentMM: number): string {
+  const covering = times.filter((time) => time.fieldOfViewMM >= extentMM);
+  return `${covering.length} of ${times.length} sample times`;
 }
 
 function notedFacts({ optional }: Opened): Fact[] {
