@@ -5,10 +5,15 @@ import type { Recipe, Setting } from "../wire.gen";
 import { textOfList } from "./list";
 import { sameValue, valueAt } from "./recipe";
 
+/** Tells whether a reconstruction method makes use of a setting. */
+export function isForMethod({ methods }: Setting, method: string): boolean {
+  return methods.length === 0 || methods.includes(method);
+}
+
 /** Tells whether a recipe makes use of a setting. */
-export function isUsed({ path, methods }: Setting, recipe: Recipe): boolean {
-  if (path.startsWith("calibration.") && !recipe.calibration) return false;
-  return methods.length === 0 || methods.includes(recipe.reconstruction.method);
+function isUsed(setting: Setting, { reconstruction, calibration }: Recipe): boolean {
+  if (setting.path.startsWith("calibration.") && !calibration) return false;
+  return isForMethod(setting, reconstruction.method);
 }
 
 /** Returns the settings that a recipe uses and that have another value in it than in the other recipe. */
@@ -18,7 +23,7 @@ export function changedSettings(settings: Setting[], recipe: Recipe, other: Reci
 }
 
 /** Returns the value of a setting, that of an absent one being what the engine takes it for. */
-export function valueIn(recipe: Recipe, { path, kind }: Setting): unknown {
+function valueIn(recipe: Recipe, { path, kind }: Setting): unknown {
   return valueAt(recipe, path) ?? (kind === "list" ? [] : kind === "choice" ? "" : 0);
 }
 

@@ -3,7 +3,7 @@
 
 import type { ComponentChildren } from "preact";
 import { useState } from "preact/hooks";
-import { changedSettings, wordsFor } from "../../store/difference";
+import { changedSettings, isForMethod, wordsFor } from "../../store/difference";
 import { redo, resetToDefaults, setCalibrated, undo } from "../../store/edit";
 import { hello } from "../../store/engine";
 import { wordsOf } from "../../store/fault";
@@ -11,7 +11,7 @@ import { textOf } from "../../store/recipe";
 import type { Strand } from "../../store/strand";
 import type { Setting } from "../../wire.gen";
 import { Field, faultAt } from "./Field";
-import { groupsOf, isAside, isForMethod, openGroups, type SettingGroup } from "./groups";
+import { groupsOf, isAside, openGroups, type SettingGroup } from "./groups";
 
 export function Settings({ strand }: { strand: Strand }) {
   const [help, setHelp] = useState("");

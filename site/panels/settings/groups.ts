@@ -1,4 +1,4 @@
-// How the form is ordered: which settings a method has, which group each belongs to, and what stands aside.
+// How the form is ordered: which group each setting belongs to, what is open, and what stands aside.
 
 import type { Setting } from "../../wire.gen";
 
@@ -15,10 +15,6 @@ const calibrationBranch = "calibration.";
 
 /** What a conversion cannot do without; the rest of the calibration stands aside. */
 const calibrationCore = ["calibration.rate", "calibration.zeroPerUS", "calibration.slopePerUSPerTorr"];
-
-export function isForMethod({ methods }: Setting, method: string): boolean {
-  return methods.length === 0 || methods.includes(method);
-}
 
 /** Tells whether a setting is folded away within its group. */
 export function isAside(path: string): boolean {
