@@ -314,3 +314,31 @@ func TestMethodsRefuseTheOtherEncoding(t *testing.T) {
 		}
 	}
 }
+
+// The image of a delay is the same whether another delay is left out or not, for spokes and single points alike.
+func TestLeavingOutADelayKeepsTheImagesOfTheOthers(t *testing.T) {
+	for _, f := range footings() {
+		if f.dim == 3 {
+			continue // the choice of frames does not know the dimension
+		}
+		a := f.acquire(t, disc(2, 8, 1.5, -1), 0, 0)
+		method := f.methods[0]
+		run := func(excluded string) *Result {
+			r, err := Run(a, "data", []byte(`{"conditioning":{"excludeDelays":`+excluded+`},"reconstruction":{"method":"`+method+`","matrix":32,"fieldOfViewMM":26},"singlePoint":{"axis":"delay","count":3}}`), 2)
+			if err != nil {
+				t.Fatal(f.name, excluded, err)
+			}
+			return r
+		}
+		all, some := run("[]"), run("[0]") // delays 2, 1, 3 without the first
+		if len(some.Images) != 2 || some.Plan.Frames.TimeUS[0] != 1 || some.Plan.Frames.TimeUS[1] != 3 {
+			t.Fatalf("%s: frames at %v µs", f.name, some.Plan.Frames.TimeUS)
+		}
+		for i := range some.Images {
+			want, got := meanWithin(all.Grid, all.Images[i+1], [3]float64{1.5, -1, 0}, f.inner), meanWithin(some.Grid, some.Images[i], [3]float64{1.5, -1, 0}, f.inner)
+			if !(math.Abs(got-want) <= 1e-4*want) { // float32 sums in another order
+				t.Errorf("%s, delay %g µs: %.5f with a delay left out, %.5f with all", f.name, some.Plan.Frames.TimeUS[i], got, want)
+			}
+		}
+	}
+}

@@ -89,7 +89,11 @@ func Reconstruct(a *acquisition.Acquisition, r recipe.Recipe, c *Constants, fram
 	}
 	switch {
 	case a.Encoding == acquisition.SinglePoint && c.SinglePoint != nil:
-		images, err := singlepoint.Images(a, singlePointSettings(r), c.SinglePoint, g, frames, progress)
+		wanted := frames
+		if f.Kind == "delay" { // single-point images along the delay go by the delays of the file, left-out ones included
+			wanted = f.delaysOf(frames)
+		}
+		images, err := singlepoint.Images(a, singlePointSettings(r), c.SinglePoint, g, wanted, progress)
 		if err != nil {
 			return nil, err
 		}
