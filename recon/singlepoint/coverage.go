@@ -16,8 +16,8 @@ type Coverage struct {
 	Times      []SampleTime `json:"times"`      // [sample]
 }
 
-// SampleTime is one sample time. At t = 0, and before the pulse of a free decay, there is no image: KMaxPerMM is 0, the
-// lengths are infinite and Usable is false.
+// SampleTime is one sample time. At t = 0, and before the pulse of a free decay, there is no image: Usable is false,
+// and KMaxPerMM and both lengths are 0, which JSON can say and infinity it cannot.
 type SampleTime struct {
 	Sample        int     `json:"sample"`
 	TimeUS        float64 `json:"timeUS"` // since k = 0
@@ -57,7 +57,6 @@ func (geo *geometry) describe(a *acquisition.Acquisition, timeShiftSamples float
 	perMT := math.Abs(acquisition.KPerNS(1, ns))
 	st := SampleTime{Sample: j, TimeUS: ns * 1e-3, Usable: perMT > 0 && (ns > 0 || a.Sequence != acquisition.FreeDecay)}
 	if !st.Usable {
-		st.FieldOfViewMM, st.ResolutionMM = math.Inf(1), math.Inf(1)
 		return st
 	}
 	st.KMaxPerMM = perMT * geo.most

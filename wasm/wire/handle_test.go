@@ -174,6 +174,27 @@ func TestAShotIsShownBesideItsNeighboursAndTheImage(t *testing.T) {
 	}
 }
 
+// A sample at the pulse itself has no image; the coverage says so in numbers that JSON can hold.
+func TestSinglePointFileWithASampleAtThePulseOpens(t *testing.T) {
+	s := phantom.Shape{Dim: 2, SemiMM: [3]float64{6, 5}}
+	p := phantom.Sum(2, phantom.Body{Shape: s, Density: 1, R2PerUS: 0.4})
+	a, err := p.AcquireSinglePoint(phantom.SinglePointProtocol{Sequence: acquisition.FreeDecay, DelayUS: []float64{0},
+		GradientMTPerM: phantom.CubeGradients(2, 15, 20), DwellNS: 50, Samples: 16, TimeZeroSample: 2, NoiseSD: 0.1})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var file bytes.Buffer
+	if err := exporter.Acquisition(&file, a); err != nil {
+		t.Fatal(err)
+	}
+	opened, _ := ask[Opened](t, NewEngine("test"), "open", OpenRequest{Names: []string{"points.npz"}}, file.Bytes())
+	for j, st := range opened.Coverage.Times {
+		if usable := j > 2; st.Usable != usable || (st.FieldOfViewMM > 0) != usable {
+			t.Errorf("sample %d: usable %v, field of view %g mm", j, st.Usable, st.FieldOfViewMM)
+		}
+	}
+}
+
 func TestProgressRisesToOne(t *testing.T) {
 	e := NewEngine("test")
 	ask[Opened](t, e, "demo", DemoRequest{Noise: false})
