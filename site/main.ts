@@ -20,6 +20,10 @@
 //                                             failed stage
 //   [data-removed], #bring-back, #variant     the variant removed last; the one that saving and loading act on
 //   [data-fault]                              text of a fault: open, save, start, recipe, or the path of a setting
+//   [data-check]                              the check: its worst level; data-older while it lags behind the settings
+//   [data-verdict], [data-finding][data-level], [data-shots], #apply-proposed, #take-back, [data-before-after],
+//   #check-shot, #toggle-shot, #series, [data-shots-drawn], [data-left-out], [data-shot-view], [data-off-image]
+//                                             within the check
 //   [data-made-up], [data-no-calibration], [data-opening], [data-warnings], [data-build]
 //   #open-files-input, #load-recipe-input     file inputs; #use-demo, #save-recipe, #save-maps, #save-pO2, #save-rate,
 //                                             #save-amplitude, #save-mask, #save-all; #theme
@@ -31,6 +35,8 @@ import { Page } from "./page";
 import { acquisition, openDemo } from "./store/acquisition";
 import { followTheme } from "./store/appearance";
 import { start, startFault } from "./store/engine";
+import { followFindings } from "./store/findings";
+import { followShots } from "./store/shotview";
 import { followTraces } from "./store/traces";
 import "./style.css";
 
@@ -50,6 +56,8 @@ async function begin(): Promise<void> {
   await new Promise((go) => setTimeout(go));
   if (!(await start())) return;
   followTraces();
+  followFindings();
+  followShots();
   await openDemo();
 }
 

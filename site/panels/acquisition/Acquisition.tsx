@@ -8,6 +8,7 @@ import { traces, tracesFault } from "../../store/traces";
 import { frameIndex, shot } from "../../store/view";
 import type { Input, Opened, Traces } from "../../wire.gen";
 import { Chart, type Table } from "../chart/Chart";
+import { Check } from "../findings/Check";
 import { CoverageChart } from "./Coverage";
 import { factsOf, sizeOf } from "./facts";
 
@@ -30,6 +31,7 @@ export function Acquisition() {
         </div>
         <Curves opened={opened} />
       </div>
+      <Check />
     </section>
   );
 }

@@ -34,7 +34,8 @@ export function Chart({ title, summary, draw, table }: Props) {
   );
 }
 
-function Numbers({ title, table }: Pick<Props, "title" | "table">) {
+/** The numbers behind a drawing, as a table on demand. */
+export function Numbers({ title, table }: Pick<Props, "title" | "table">) {
   const [open, setOpen] = useState(false);
   return (
     <details class="behind" onToggle={(event) => setOpen(event.currentTarget.open)}>
